@@ -1,0 +1,173 @@
+"""What the workshop re-sets on every build: toe, camber, caster, each by its adjuster, solved together.
+
+An adjuster is a linear move of the parts' features (a link longer, a mount shimmed outboard), so it enters a build the
+way an error does. The targets are the nominal's own angles at design plus what the workshop leaves. The solution is a
+quasi-Newton iteration per build: it starts from the nominal's exact neighbourhood and improves its matrix by Broyden's
+rank-one update (C. G. Broyden, Math. Comp. 19, 1965), so it ends on the true, nonlinear angles.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from catalog.errors import InputError
+from study.assembly import ARM_PIVOTS, Corner
+
+ANGLES = ("toe", "camber", "caster")
+TOLERANCE_DEG = 1e-9
+MOST_PASSES = 12
+ALIGNED, NOT_ALIGNED = 0, 3
+
+
+class AlignmentError(InputError):
+    """An alignment that its geometry cannot have."""
+
+
+@dataclass(frozen=True)
+class Bench:
+    """The adjusters of one corner. moves: per adjuster ((feature, direction (k,)), …) per mm; step, reach (A,), inf/0 if none."""
+
+    targets: tuple[str, ...]
+    by: tuple[str, ...]
+    moves: tuple[tuple[tuple[str, np.ndarray], ...], ...]
+    step: np.ndarray
+    reach: np.ndarray
+
+    def extra(self, settings):
+        """Feature errors (feature, (k, N)) of settings (A, N) mm."""
+        return [
+            (feature, direction[:, None] * settings[i]) for i, moves in enumerate(self.moves) for feature, direction in moves
+        ]
+
+
+def bench_of(corner: Corner, study) -> Bench:
+    """The adjusters that a study names, on this corner. Raises AlignmentError."""
+    chosen = [adjuster for adjuster in study.alignment or () if adjuster.by is not None]
+    known = adjusters_of(corner)
+    for adjuster in chosen:
+        if adjuster.by not in known:
+            raise AlignmentError(
+                f'alignment.{adjuster.target}: by = "{adjuster.by}" is no adjuster of this {corner.linkage}; '
+                f"it has {', '.join(sorted(known)) or 'none'}"
+            )
+    return Bench(
+        tuple(a.target for a in chosen),
+        tuple(a.by for a in chosen),
+        tuple(tuple(known[a.by]) for a in chosen),
+        np.array([a.step_mm or 0.0 for a in chosen]),
+        np.array([np.inf if a.range_mm is None else a.range_mm for a in chosen]),
+    )
+
+
+def adjusters_of(corner: Corner) -> dict[str, list[tuple[str, np.ndarray]]]:
+    """Every adjuster that a linkage has: name → moves per mm of setting.
+
+    Links: + longer. An arm: + both legs longer, or both chassis mounts outboard; split: front + and rear −.
+    strut_top: + outboard, strut_top_x: + forward; hinge_inner, hinge_outer: + forward.
+    """
+    one, y, x = np.ones(1), np.array([0.0, 1.0, 0.0]), np.array([1.0, 0.0, 0.0])
+    found = {}
+    for arm, build in corner.build.items():
+        if build == "legs":
+            ends = [(f"{arm}.front_leg", one), (f"{arm}.rear_leg", one)]
+        else:
+            ends = [(f"chassis.{pivot}", y) for pivot in ARM_PIVOTS[arm][:2]]
+        found[arm] = ends
+        found[f"{arm}_split"] = [ends[0], (ends[1][0], -ends[1][1])]
+    if "chassis.strut_top" in corner.features:
+        found["strut_top"] = [("chassis.strut_top", y)]
+        found["strut_top_x"] = [("chassis.strut_top", x)]
+    for hinge in ("hinge_inner", "hinge_outer"):
+        if f"chassis.{hinge}" in corner.features:
+            found[hinge] = [(f"chassis.{hinge}", x)]
+    for name in corner.features:
+        if name.endswith(".length"):
+            found[name.removesuffix(".length")] = [(name, one)]
+    return found
+
+
+@dataclass
+class Setting:
+    """Outcome for N builds: settings (A, N) mm, ran_out (A, N) bool, status (N,) ALIGNED or NOT_ALIGNED, miss (N,) deg."""
+
+    settings: np.ndarray
+    ran_out: np.ndarray
+    status: np.ndarray
+    miss: np.ndarray
+
+
+def align(bench: Bench, measure, *, goal, start, gains, stepless=False) -> Setting:
+    """Set every build to its goal.
+
+    measure: settings (A, N) → angles (A, N) deg of the built and assembled corner, NaN where it does not assemble;
+    goal (A, N) deg; start (A, N) mm; gains (A, A) deg per mm, of the nominal. First all together without steps; what
+    runs out stays at its stop and the others are set again; then each stepped one goes to its nearest multiple and the
+    stepless ones are set again. With `stepless` the steps are left out.
+    """
+    n = goal.shape[1]
+    state = _State(measure, goal, start.copy(), np.repeat(gains[:, :, None], n, axis=2))
+    free = np.ones((len(bench.targets), n), bool)
+    ran_out = _set_within_reach(state, free, bench.reach[:, None])
+    stepped = bench.step > 0
+    if stepped.any() and not stepless:
+        state.move_to(_stepped(state.settings, bench))
+        free &= ~stepped[:, None]
+        ran_out |= _set_within_reach(state, free, bench.reach[:, None])
+    miss = np.where(free, np.abs(state.miss), 0.0).max(axis=0, initial=0.0)
+    status = np.where(miss <= TOLERANCE_DEG, ALIGNED, NOT_ALIGNED)
+    return Setting(state.settings, ran_out, status, miss)
+
+
+def _stepped(settings, bench):
+    """Settings with the stepped adjusters at their nearest multiple within reach."""
+    step = np.where(bench.step > 0, bench.step, 1.0)[:, None]
+    most = np.where(np.isfinite(bench.reach[:, None]), np.floor(bench.reach[:, None] / step + 1e-9), np.inf)
+    count = np.clip(np.round(settings / step), -most, most)
+    return np.where(bench.step[:, None] > 0, count * step, settings)
+
+
+def _set_within_reach(state, free, reach):
+    """Solve the free adjusters, pin what runs out at its stop (free turns False there), until nothing new runs out."""
+    ran_out = np.zeros_like(free)
+    for _ in range(len(free) + 1):
+        state.solve(free)
+        beyond = free & (np.abs(state.settings) > reach * (1.0 + 1e-12))
+        if not beyond.any():
+            break
+        ran_out |= beyond
+        free &= ~beyond
+        state.move_to(np.where(beyond, np.sign(state.settings) * np.minimum(reach, 1e9), state.settings))
+    return ran_out
+
+
+class _State:
+    """Settings of all builds with their angles and Broyden matrices (A, A, N)."""
+
+    def __init__(self, measure, goal, settings, matrix):
+        self.measure, self.goal, self.settings, self.matrix = measure, goal, settings, matrix
+        self.miss = measure(settings) - goal
+
+    def solve(self, free):
+        for _ in range(MOST_PASSES):
+            missing = np.where(free, np.abs(self.miss), 0.0)
+            if not np.nanmax(missing, initial=0.0) > TOLERANCE_DEG:
+                return
+            self.move_to(self.settings + self._step(free))
+
+    def _step(self, free):
+        """Newton step of the free adjusters; pinned ones get the identity's row and no step."""
+        eye = np.eye(len(free))[:, :, None]
+        a = np.where(free[:, None] & free[None], self.matrix, eye)
+        right = np.where(free, -np.nan_to_num(self.miss), 0.0)
+        return np.linalg.solve(np.moveaxis(a, -1, 0), right.T[..., None])[..., 0].T
+
+    def move_to(self, settings):
+        """Measure at new settings and give the matrix Broyden's update for the way gone."""
+        step = settings - self.settings
+        miss = self.measure(settings) - self.goal
+        length = (step * step).sum(axis=0)
+        error = miss - self.miss - np.einsum("abn,bn->an", self.matrix, step)
+        with np.errstate(all="ignore"):
+            update = np.where((length > 0) & np.isfinite(error).all(axis=0), error / np.where(length > 0, length, 1.0), 0.0)
+        self.matrix = self.matrix + update[:, None] * step[None]
+        self.settings, self.miss = settings, miss

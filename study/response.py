@@ -1,0 +1,243 @@
+"""From errors to the values a study asks for: build, align, put in position, measure, take. Arrays in, arrays out.
+
+`Response` is made once per study and stage and is read-only afterwards, so that threads share it. Builds go through
+in blocks of a fixed size, so the same errors give the same bits however they are cut into chunks of whole blocks.
+"""
+
+from dataclasses import dataclass
+from types import SimpleNamespace
+
+import numpy as np
+
+from study.alignment import NOT_ALIGNED, AlignmentError, Setting, align, bench_of
+from study.assembly import corner_of
+from study.build import HANDS, build_model
+from study.kernel import solve as kernel
+from study.measures import KEYS, AxleView
+from study.stations import STEP, Hand, Spot
+
+BLOCK = 1024
+BEFORE_LEAVES_OUT = ("toe", "camber", "caster")
+NO_STUDY = SimpleNamespace(errors=(), alignment=None, sides="mirrored", jigs=(), measures=())
+
+
+@dataclass(frozen=True)
+class Values:
+    """Outcome of N builds. values (M, N) and positions (P, N), NaN where a build has none; status (N,) 0 = sound.
+
+    settings, ran_out (A, N): the adjusters of left, then right hand where it is built apart.
+    """
+
+    values: np.ndarray
+    positions: np.ndarray
+    status: np.ndarray
+    settings: np.ndarray
+    ran_out: np.ndarray
+
+
+@dataclass(frozen=True)
+class Request:
+    """One measure at one position, in car terms."""
+
+    of: str
+    side: str
+    bump_mm: float
+    roll_deg: float
+    rack_mm: float
+
+
+def requests_of(measure) -> list[Request]:
+    """The positions that a study's measure asks for, in the order of its sweep."""
+    at = {"bump": measure.bump_mm, "roll": measure.roll_deg, "rack": measure.rack_mm}
+    spots = [at | {measure.over: x} for x in measure.sweep] if measure.over else [at]
+    return [Request(measure.of, measure.side, s["bump"], s["roll"], s["rack"]) for s in spots]
+
+
+TAKES = {
+    "range": lambda x, v: v.max(axis=0) - v.min(axis=0),
+    "max": lambda x, v: v.max(axis=0),
+    "min": lambda x, v: v.min(axis=0),
+    "max-abs": lambda x, v: np.abs(v).max(axis=0),
+    "slope": lambda x, v: ((x - x.mean()) @ v) / ((x - x.mean()) ** 2).sum(),
+}
+
+
+def taken(measure, positions):
+    """The measure (N,) from its values at its positions (p, N)."""
+    return TAKES[measure.take](np.array(measure.sweep), positions) if measure.over else positions[0]
+
+
+class Response:
+    """The studied car as a function of its errors.
+
+    stage "before" leaves toe, camber and caster as built; "after" sets them. `stepless`: steps of adjusters left out.
+    """
+
+    def __init__(self, geometry, study=NO_STUDY, *, stage="after", stepless=False):
+        self.geometry, self.study, self.stage, self.stepless = geometry, study, stage, stepless
+        self.solid = geometry.linkage == "solid-axle"
+        self.alike = self.solid or (study.sides == "mirrored" and geometry.right_is_mirror)
+        corners = {hand: corner_of(geometry, hand) for hand in (("left",) if self.alike else HANDS)}
+        self.model = build_model(corners, study)
+        self.hands = {hand: self._hand(hand, corner) for hand, corner in corners.items()}
+        self._plan([request for measure in study.measures for request in requests_of(measure)])
+
+    def _hand(self, hand, corner):
+        study = self.study if self.stage == "after" else _unaligned(self.study)
+        return Hand(
+            corner, effects=self.model.effects[hand], bench=bench_of(corner, study), bands=self.model.bands[hand],
+            scalars=self.model.scalars, vehicle=self.geometry.vehicle,
+        )  # fmt: skip
+
+    # --- which views the requests need
+
+    def _plan(self, requests):
+        """Solve every station now, so that a position out of reach is an error before any work is done."""
+        self.requests = requests
+        self.rates: dict[tuple[str, Spot], set[str]] = {}
+        self.starts = {hand: self._bench_start(found) for hand, found in self.hands.items() if found.bench.by}
+        for request in requests:
+            info = KEYS[request.of]
+            for hand in self._hands_of(request):
+                name, spot = self._spot(hand, request)
+                self.rates.setdefault((name, spot), set()).update(self.hands[name].rates_for(info))
+                self.hands[name].station(spot)
+                if "rest" in info.needs:
+                    self.rates.setdefault((name, spot.at_rest()), set())
+                    self.hands[name].station(spot.at_rest())
+                if "locked" in info.needs and spot.rack_mm:
+                    held = spot._replace(locked=True)
+                    self.rates.setdefault((name, held), set())
+                    self.hands[name].station(held)
+
+    def _scope(self, request):
+        return KEYS[request.of].scope_on(self.solid)
+
+    def _hands_of(self, request):
+        return HANDS if self._scope(request) == "axle" else (request.side,)
+
+    def _spot(self, hand, request):
+        """(name of the hand that is solved, the position as that hand sees it)."""
+        flip = -1.0 if hand == "right" and not self.solid else 1.0
+        spot = Spot(request.bump_mm + 0.0, flip * request.roll_deg + 0.0, flip * request.rack_mm + 0.0)
+        return ("left" if self.alike else hand), spot
+
+    # --- evaluation
+
+    def evaluate(self, errors) -> Values:
+        """Values of builds with errors (D, N) in mm and degrees."""
+        errors = np.asarray(errors, float)
+        parts = [self._block(errors[:, i : i + BLOCK]) for i in range(0, max(errors.shape[1], 1), BLOCK)]
+        return Values(*(np.concatenate(pieces, axis=-1) for pieces in zip(*parts, strict=True)))
+
+    def _block(self, errors):
+        n = errors.shape[1]
+        with np.errstate(all="ignore"):
+            set_up = {name: self._aligned(name, hand, errors) for name, hand in self.hands.items()}
+            status = np.zeros(n, np.uint8)
+            for _, setting in set_up.values():
+                status = np.maximum(status, setting.status.astype(np.uint8))
+            shelf = _Shelf(self, {name: block for name, (block, _) in set_up.items()})
+            rows = np.array([shelf.value(request) for request in self.requests]).reshape(len(self.requests), n)
+            status = np.where(shelf.status(n) > 0, shelf.status(n), status).astype(np.uint8)
+            rows[:, status > 0] = np.nan
+            values = self._take(rows, n)
+        settings = np.concatenate([s.settings for _, s in set_up.values()])
+        return values, rows, status, settings, np.concatenate([s.ran_out for _, s in set_up.values()])
+
+    def _take(self, rows, n):
+        out, at = np.empty((len(self.study.measures), n)), 0
+        for i, measure in enumerate(self.study.measures):
+            count = max(len(measure.sweep), 1)
+            out[i] = taken(measure, rows[at : at + count])
+            at += count
+        return out
+
+    # --- alignment
+
+    def _bench_start(self, hand):
+        """(nominal angles (A, 1), gains (A, A), sensitivities (A, D)) of the bench at design. Raises AlignmentError."""
+        d, a = hand.scalars, len(hand.bench.by)
+        moves = np.concatenate((np.zeros((d + a, 1)), np.eye(d + a) * STEP, -np.eye(d + a) * STEP), axis=1)
+        angles, _ = hand.angles(hand.block(moves[:d], moves[d:]))
+        slope = (angles[:, 1 : 1 + d + a] - angles[:, 1 + d + a :]) / (2.0 * STEP)
+        gains = slope[:, d:]
+        values = np.linalg.svd(gains, compute_uv=False) if np.isfinite(gains).all() else np.zeros(1)
+        if not values[-1] > 1e-3 * values[0] or not values[0] > 1e-4:
+            pairs = ", ".join(f"{t} by {b}" for t, b in zip(hand.bench.targets, hand.bench.by, strict=True))
+            raise AlignmentError(
+                f"alignment: these adjusters do not set these angles apart ({pairs}; gains {np.round(gains, 4).tolist()} "
+                "degrees per mm); name other adjusters"
+            )
+        return angles[:, :1], gains, slope[:, :d]
+
+    def _aligned(self, name, hand, errors):
+        a, n = len(hand.bench.by), errors.shape[1]
+        if not a:
+            none = np.zeros((0, n))
+            return hand.block(errors, none), Setting(none, none.astype(bool), np.zeros(n, int), np.zeros(n))
+        nominal, gains, slope = self.starts[name]
+        left = np.stack([errors[hand.bands[target]] for target in hand.bench.targets])
+        start = np.linalg.solve(gains, left - slope @ errors)
+        setting = align(
+            hand.bench, lambda settings: hand.angles(hand.block(errors, settings))[0],
+            goal=nominal + left, start=start, gains=gains, stepless=self.stepless,
+        )  # fmt: skip
+        return hand.block(errors, setting.settings), setting
+
+
+class _Shelf:
+    """The views of one block, made when first asked for."""
+
+    def __init__(self, response, blocks):
+        self.response, self.blocks, self.views = response, blocks, {}
+
+    def view(self, hand, request):
+        name, spot = self.response._spot(hand, request)
+        rest = locked = None
+        needs = KEYS[request.of].needs
+        if "rest" in needs:
+            rest = self._view(name, hand, spot.at_rest())
+        if "locked" in needs and spot.rack_mm:
+            locked = self._view(name, hand, spot._replace(locked=True))
+        view = self._view(name, hand, spot)
+        view.rest, view.locked = rest or view.rest, locked or view.locked
+        return view
+
+    def _view(self, name, hand, spot):
+        suffix = f"_{hand}" if self.response.solid else ""
+        key = (name, spot, suffix)
+        if key not in self.views:
+            rates = tuple(sorted(self.response.rates[name, spot]))
+            self.views[key] = self.response.hands[name].view(self.blocks[name], spot, rates=rates, suffix=suffix)
+        return self.views[key]
+
+    def value(self, request):
+        info = KEYS[request.of]
+        if self.response._scope(request) == "side":
+            return info.value(self.view(request.side, request), None)
+        left, right = self.view("left", request), self.view("right", request)
+        axle = AxleView(
+            left=left, right=right, vehicle=self.response.geometry.vehicle, solid=self.response.solid, rack_mm=request.rack_mm
+        )
+        return info.value(None, axle)
+
+    def status(self, n):
+        worst = np.zeros(n, np.uint8)
+        for view in self.views.values():
+            worst = np.maximum(worst, view.pose.status.astype(np.uint8))
+        return worst
+
+
+def _unaligned(study):
+    """The study's alignment without what the stage "before" leaves out."""
+    kept = tuple(a for a in study.alignment or () if a.target not in BEFORE_LEAVES_OUT)
+    return SimpleNamespace(alignment=kept or None)
+
+
+STATUS_TEXT = {
+    kernel.CLOSED: "sound",
+    kernel.NOT_CLOSED: "does not assemble",
+    kernel.OTHER_BRANCH: "assembles on the other branch",
+    NOT_ALIGNED: "cannot be aligned",
+}

@@ -1,0 +1,357 @@
+"""Outcomes of a study's tasks to result tables: lists of plain rows, which the catalog keeps and charts and sheet read."""
+
+import math
+
+import numpy as np
+
+from study.measures import KEYS
+from study.methods import SAMPLED, linear, spread
+from study.methods.problem import Problem
+from study.response import TAKES, taken
+from study.tasks import CURVE_POSITIONS, StudyWork
+from study.zone_field import ZoneField
+from study.zones import Zone
+
+QUANTILES = {"q005": 0.005, "q025": 0.025, "q05": 0.05, "q25": 0.25, "q50": 0.5, "q75": 0.75, "q95": 0.95, "q975": 0.975, "q995": 0.995}
+CURVE_QUANTILES = {k: QUANTILES[k] for k in ("q05", "q25", "q50", "q75", "q95")}
+BINS = 40
+LINEAR_DRAWS = 4096
+
+
+def tables(work: StudyWork, outcomes: dict) -> tuple[dict[str, list[dict]], dict]:
+    """(result tables, facts of the run) from the outcomes by task number."""
+    out = {k: [] for k in ("ranking", "stats", "histogram", "curves", "demand", "worst", "correlations", "failures")}
+    facts = {"builds": 0, "dropped_blocks": 0, "unassembled": 0, "withheld": False, "notes": []}
+    for stage in work.stages:
+        _Stage(work, stage, outcomes, out, facts).fill()
+    curves = next(task for task in work.tasks if task.kind == "curves")
+    out["curves"] = _curves(work, curves, outcomes[curves.number])
+    facts["builds"] += sum(len(o.status) for t, o in ((t, outcomes[t.number]) for t in work.tasks) if t.kind != "worst")
+    facts["perfect"] = list(work.model.perfect)
+    return out, facts
+
+
+class _Stage:
+    """One stage of a study."""
+
+    def __init__(self, work, stage, outcomes, out, facts):
+        self.work, self.stage, self.out, self.facts = work, stage, out, facts
+        self.study, self.model, self.method = work.study, work.model, work.study.method
+        self.measures = self.study.measures
+        tasks = [t for t in work.tasks if t.stage == stage]
+        self.effects_of = outcomes[next(t.number for t in tasks if t.kind == "effects")].values
+        drawn = [outcomes[t.number] for t in tasks if t.kind == "draws"]
+        self.drawn = np.concatenate([o.values for o in drawn], axis=1) if drawn else None
+        self.status = np.concatenate([o.status for o in drawn]) if drawn else None
+        self.worst = next((outcomes[t.number] for t in tasks if t.kind == "worst"), None)
+        gone = {"alignment.toe", "alignment.camber", "alignment.caster"} if stage == "before" else set()
+        self.sources = [i for i, s in enumerate(self.model.sources) if s.name not in gone]
+
+    def fill(self):
+        self._linear()
+        self.result = self._analysed() if self.drawn is not None else None
+        self._ranking()
+        self._stats()
+        if self.drawn is not None and self.stage == "after":
+            self._demand()
+        if self.worst is not None:
+            self._worst()
+
+    # --- linear model
+
+    def _linear(self):
+        _, h = linear.steps(self.model.field.sd())
+        self.effects = linear.effects(self.effects_of, h)
+        self.nominal_positions = self.effects_of[:, 0]
+        field, effects, problem = self._with_steps()
+        self.linear_parts = (field, effects, problem)
+        stack = linear.stack(self._measure_effects(effects), field, problem)
+        self.rss, self.shares, self.stack = stack.rss, stack.shares.copy(), stack
+        self.signed = self._measure_effects(self.effects)
+        for i, measure in enumerate(self.measures):
+            if self._is_nonlinear(measure):
+                self._taken(i, measure)
+
+    def _is_nonlinear(self, measure):
+        return measure.over is not None and measure.take != "slope"
+
+    def _measure_effects(self, effects):
+        """Signed effects (M, D); NaN-free zeros stand where `take` is not linear and draws decide."""
+        out = np.zeros((len(self.measures), effects.shape[1]))
+        for i, (measure, rows) in enumerate(zip(self.measures, self.work.position_slices, strict=True)):
+            if not self._is_nonlinear(measure):
+                out[i] = np.nan_to_num(taken(measure, effects[rows]))
+        return out
+
+    def _taken(self, i, measure):
+        rows = self.work.position_slices[i]
+        field, effects, problem = self.linear_parts
+        x = np.array(measure.sweep)
+        part = np.nan_to_num(effects[rows])
+        self.shares[i] = linear.taken_shares(
+            self.nominal_positions[rows], part, field, problem, lambda v: TAKES[measure.take](x, v), seed=self.study.seed
+        )
+        self.rss[i] = np.nan
+
+    def _with_steps(self):
+        """The zones and effects of the linear model; a stepped adjuster adds ±step/2, in degrees, to its band's source."""
+        field, effects, group = self.model.field, self.effects, self.model.problem.group_of
+        extra_zones, columns, groups = [], [], []
+        hands = self.work.stepless(self.stage) if self.stage == "after" else None
+        for name, hand in (hands.hands.items() if hands else ()):
+            if not hand.bench.by:
+                continue
+            apart = 1.0 / np.diag(np.linalg.inv(hands.starts[name][1]))
+            for target, step, gain in zip(hand.bench.targets, hand.bench.step, apart, strict=True):
+                if step:
+                    row = hand.bands[target]
+                    extra_zones.append(Zone("length", (abs(gain) * step / 2.0,)))
+                    columns.append(row)
+                    groups.append(group[row])
+        if not extra_zones:
+            return field, effects, self.model.problem
+        problem = Problem(np.concatenate((group, groups)), len(self.model.sources), self.model.problem.names)
+        return ZoneField(field.zones + tuple(extra_zones)), np.concatenate((effects, effects[:, columns]), axis=1), problem
+
+    # --- sampled methods
+
+    def _analysed(self):
+        m = len(self.measures)
+        bad = self.status > 0
+        result = self.work.method.analyse(
+            self.model.problem, self.drawn[:m], seed=self.study.seed, unassembled=bad
+        )
+        self.facts["unassembled"] += int(bad.sum())
+        self.facts["dropped_blocks"] = max(self.facts["dropped_blocks"], int(getattr(result, "dropped_blocks", 0) or 0))
+        if getattr(result, "withheld", False):
+            self.facts["withheld"] = True
+            self.facts["notes"].append(
+                f"{self.stage}: {int(bad.sum())} of {len(bad)} builds could not be assembled or aligned, more than 0.5 %: "
+                "indices are withheld, the sources of the failures are ranked instead"
+            )
+            self._failures(result.failures)
+        return result
+
+    def _failures(self, failures):
+        if failures is None:
+            return
+        values = failures.st if self.method == "sobol" else failures.source_mu_star
+        for g in np.argsort(failures.rank[0]):
+            self.out["failures"].append({
+                "stage": self.stage, "source": self.model.sources[g].name, "rank": int(failures.rank[0, g]),
+                "value": _number(values[0, g]),
+            })  # fmt: skip
+
+    # --- rows
+
+    def _ranking(self):
+        for i, measure in enumerate(self.measures):
+            rows = [self._ranking_row(i, measure, g) for g in self.sources]
+            key = {"sobol": "st", "morris": "mu_star"}.get(self.method, "linear_share")
+            if rows and all(row[key] is None for row in rows):
+                key = "linear_share"
+            rows.sort(key=lambda row, key=key: -(row[key] if row[key] is not None else -1.0))
+            for rank, row in enumerate(rows, start=1):
+                row["rank"] = rank
+            self._ties(i, rows)
+            self.out["ranking"] += rows
+
+    def _ties(self, i, rows):
+        tied = getattr(self.result, "tied", None)
+        number = {s.name: g for g, s in enumerate(self.model.sources)}
+        for rank, row in enumerate(rows):
+            row["tied"] = bool(rank and tied is not None and not self._held_back(i) and tied[i, number[row["source"]]])
+
+    def _held_back(self, i):
+        if self.result is None or self.method == "spread":
+            return True
+        return bool(self.result.withheld or self.result.withheld_measures[i])
+
+    def _ranking_row(self, i, measure, g):
+        source = self.model.sources[g]
+        row = {
+            "stage": self.stage, "measure_no": i, "measure": measure.name, "unit": _unit(measure), "source": source.name,
+            "linear_share": _number(self.shares[i, g]), "verdict": None,
+        }  # fmt: skip
+        for key in ("st", "s1"):
+            for end in ("", "_low", "_high"):
+                row[key + end] = self._index(i, g, key + end) if self.method == "sobol" else None
+        for name, attribute in (("mu_star", "source_mu_star"), ("mu_star_low", "source_low"), ("mu_star_high", "source_high")):
+            row[name] = self._index(i, g, attribute) if self.method == "morris" else None
+        return row | self._effect(i, measure, source)
+
+    def _index(self, i, g, name):
+        return None if self._held_back(i) else _number(getattr(self.result, name)[i, g])
+
+    def _effect(self, i, measure, source):
+        """The signed effects of the measure's own hand; an axle measure reads the left hand's, then the right's."""
+        axle = KEYS[measure.of].scope_on(self.work.after.solid) == "axle"
+        columns = [c for rows in source.columns for c in rows] if axle else list(source.of_hand(measure.side))
+        axes = list(source.axes)
+        if axle and len(source.columns) == 2:
+            axes = [f"left {a}" for a in axes] + [f"right {a}" for a in axes]
+        effect = None if self._is_nonlinear(measure) else [float(e) for e in self.signed[i, columns]]
+        size = None if effect is None else math.sqrt(sum(e * e for e in effect))
+        return {"effect": effect, "effect_axes": axes, "effect_unit": f"{_unit(measure)} per {source.unit}", "effect_per_mm": size}
+
+    def _stats(self):
+        m = len(self.measures)
+        values, bad = self._independent()
+        summary = spread.summary(values, unassembled=bad[0]) if values is not None and values.shape[1] else None
+        limits = np.array([measure.limits or (-np.inf, np.inf) for measure in self.measures]).reshape(m, 2)
+        limited = any(measure.limits for measure in self.measures)
+        good = None
+        if summary is not None and limited:
+            good = spread.good_share(values, limits, bad[0] | bad[1])
+        self._facts_of(good, bad)
+        for i, measure in enumerate(self.measures):
+            row = self._stats_row(i, measure)
+            if summary is not None:
+                row |= {"mean": _number(summary.mean[i]), "sd": _number(summary.sd[i])}
+                row |= {"low": _number(summary.low[i]), "high": _number(summary.high[i])}
+                row |= {k: _number(q) for k, q in zip(QUANTILES, summary.quantiles[i], strict=True)}
+                row |= {"builds": int(values.shape[1]), "unassembled": int(bad[0].sum())}
+                self._histogram(i, values[i])
+            if good is not None and measure.limits:
+                row |= {"good_share": float(good.measure_share[i]), "good_low": float(good.measure_low[i]), "good_high": float(good.measure_high[i])}
+            self.out["stats"].append(row)
+        if summary is not None and self.method == "spread":
+            self._correlations(summary)
+
+    def _independent(self):
+        """Values (M, N) of independent builds and the flags (unassembled, adjuster ran out), each (N,)."""
+        m = len(self.measures)
+        if self.drawn is None:
+            return self._linear_draws(), (np.zeros(LINEAR_DRAWS, bool), np.zeros(LINEAR_DRAWS, bool))
+        rows = self.work.method.independent_rows(self.model.problem, self.study.size)
+        a = (self.drawn.shape[0] - m) // 2
+        ran_out = self.drawn[m + a :, rows].any(axis=0)
+        return self.drawn[:m, rows], (self.status[rows] > 0, ran_out)
+
+    def _linear_draws(self):
+        if self.method != "linear":
+            return None
+        field, effects, _ = self.linear_parts
+        drawn = linear.draws(
+            self.nominal_positions, np.nan_to_num(effects), field, seed=self.study.seed, count=LINEAR_DRAWS
+        )
+        return np.stack([taken(m, drawn[rows]) for m, rows in zip(self.measures, self.work.position_slices, strict=True)])
+
+    def _facts_of(self, good, bad):
+        if self.stage == self.work.stages[-1]:
+            self.facts |= {
+                "good_share": None if good is None else good.share, "good_low": None if good is None else good.low,
+                "good_high": None if good is None else good.high,
+            }  # fmt: skip
+            if good is not None and self.study.cars:
+                self.facts["all_cars"] = spread.all_cars(good.share, self.study.cars)
+
+    def _stats_row(self, i, measure):
+        none = dict.fromkeys(("mean", "sd", "low", "high", *QUANTILES, "good_share", "good_low", "good_high", "builds", "unassembled"))
+        low, high = measure.limits or (-math.inf, math.inf)
+        nominal = taken(measure, self.nominal_positions[self.work.position_slices[i]][:, None])[0]
+        linear_only = not self._is_nonlinear(measure)
+        worst = [float(nominal + self.stack.worst_low[i]), float(nominal + self.stack.worst_high[i])] if linear_only else None
+        return {
+            "stage": self.stage, "measure_no": i, "measure": measure.name, "of": measure.of, "unit": _unit(measure),
+            "side": "axle" if KEYS[measure.of].scope_on(self.work.after.solid) == "axle" else measure.side,
+            "position": position_text(measure), "nominal": _number(nominal), **none,
+            "limit_low": _number(low), "limit_high": _number(high),
+            "rss": _number(self.rss[i]), "worst_low": worst and _number(worst[0]), "worst_high": worst and _number(worst[1]),
+        }  # fmt: skip
+
+    def _histogram(self, i, values):
+        values = values[np.isfinite(values)]
+        if not len(values):
+            return
+        counts, edges = np.histogram(values, bins=BINS)
+        for count, left, right in zip(counts, edges[:-1], edges[1:], strict=True):
+            self.out["histogram"].append(
+                {"stage": self.stage, "measure_no": i, "left": float(left), "right": float(right), "count": int(count)}
+            )
+
+    def _correlations(self, summary):
+        for a, b in zip(*np.triu_indices(len(self.measures), 1), strict=True):
+            self.out["correlations"].append({
+                "stage": self.stage, "measure_a": self.measures[a].name, "measure_b": self.measures[b].name,
+                "r": _number(summary.correlations[a, b]),
+            })  # fmt: skip
+
+    def _demand(self):
+        m = len(self.measures)
+        rows = self.work.method.independent_rows(self.model.problem, self.study.size)
+        rows = rows if len(rows) else np.arange(self.drawn.shape[1])
+        a = (self.drawn.shape[0] - m) // 2
+        names = [
+            (target, by, name)
+            for name, hand in self.work.after.hands.items() for target, by in zip(hand.bench.targets, hand.bench.by, strict=True)
+        ]  # fmt: skip
+        for k, (target, by, hand) in enumerate(names):
+            settings, out = self.drawn[m + k, rows], self.drawn[m + a + k, rows]
+            sound = settings[np.isfinite(settings) & (self.status[rows] == 0)]
+            if len(sound):
+                side = f" ({hand})" if len(self.work.after.hands) > 1 else ""
+                self.out["demand"].append({
+                    "adjuster": target + side, "by": by, "unit": "mm", "low": float(sound.min()), "high": float(sound.max()),
+                    **_quantiles(sound, QUANTILES), "ran_out_share": float(np.nanmean(out)),
+                })  # fmt: skip
+
+    def _worst(self):
+        rows = self.worst.values[:-1].reshape(len(self.measures), 2, -1)
+        self.facts["builds"] += int(self.worst.values[-1, 0])
+        for i, k in np.ndindex(len(self.measures), 2):
+            for source in self.model.sources:
+                for hand, columns in zip(source.hands, source.columns, strict=True):
+                    for axis, column in zip(source.axes, columns, strict=True):
+                        self.out["worst"].append({
+                            "stage": self.stage, "measure_no": i, "direction": ("low", "high")[k], "value": _number(rows[i, k, 0]),
+                            "source": source.name, "axis": axis if hand == "both" else f"{hand} {axis}",
+                            "error": _number(rows[i, k, 1 + column]),
+                        })  # fmt: skip
+
+
+def _curves(work, task, outcome):
+    rows = []
+    values = np.where(outcome.status > 0, np.nan, outcome.values)
+    for i, measure in enumerate(work.curve_measures):
+        for j, x in enumerate(measure.sweep):
+            line = values[i * CURVE_POSITIONS + j]
+            rows.append({
+                "stage": task.stage, "axis": measure.over, "x": x, "key": measure.of, "unit": KEYS[measure.of].unit,
+                "side": "axle" if KEYS[measure.of].scope == "axle" else "left", "nominal": _number(line[0]),
+                **_quantiles(line[1:], CURVE_QUANTILES),
+            })  # fmt: skip
+    return rows
+
+
+def _quantiles(values, wanted):
+    values = values[np.isfinite(values)]
+    if not len(values):
+        return dict.fromkeys(wanted)
+    return dict(zip(wanted, map(float, np.quantile(values, list(wanted.values()))), strict=True))
+
+
+def _unit(measure):
+    unit = KEYS[measure.of].unit
+    if measure.take == "slope":
+        return f"{unit} per {'deg' if measure.over == 'roll' else 'mm'}"
+    return unit
+
+
+def position_text(measure) -> str:
+    """Where a measure is taken, in words."""
+    units = {"bump": "mm", "roll": "°", "rack": "mm"}
+    at = {"bump": measure.bump_mm, "roll": measure.roll_deg, "rack": measure.rack_mm}
+    words = [f"{name} {value:g} {units[name]}" for name, value in at.items() if value and name != measure.over]
+    if measure.over:
+        sweep = measure.sweep
+        words.insert(0, f"{measure.take} over {measure.over} {sweep[0]:g} to {sweep[-1]:g} {units[measure.over]}, {len(sweep)} positions")
+    return ", ".join(words) or "at design"
+
+
+def _number(value):
+    value = float(value)
+    return value if math.isfinite(value) else None
+
+
+__all__ = ["SAMPLED", "position_text", "tables"]

@@ -1,0 +1,165 @@
+"""The work of a study cut into tasks, each a pure function of plain data: what threads run and a kill may interrupt.
+
+A task belongs to a stage and has a kind: "effects" (the batch of central differences about the drawing), "draws" (some
+blocks of the method's sample), "curves" (builds along bump, roll and rack), "worst" (the search for the worst build).
+Its outcome is one array (rows, builds) and a status (builds,).
+"""
+
+from dataclasses import dataclass
+from functools import cached_property
+from types import SimpleNamespace
+
+import numpy as np
+
+from study.methods import METHODS, SAMPLED, linear, spread
+from study.methods.problem import Problem
+from study.response import Response, requests_of
+from study.stations import PositionError, Spot
+from study.study_measures import Measure
+
+BUILDS_PER_TASK = 4096
+CURVE_BUILDS = 256
+CURVE_KEYS = {
+    "bump": ("toe_deg", "camber_deg", "roll_centre_height_mm"),
+    "roll": ("toe_deg", "camber_deg"),
+    "rack": ("toe_deg", "camber_deg"),
+}
+CURVE_TRAVEL = {"bump": 30.0, "roll": 2.0, "rack": 20.0}
+CURVE_POSITIONS = 13
+
+
+@dataclass(frozen=True)
+class Task:
+    """One chunk of work. first, count: blocks of the sample (draws), else 0 and 1; builds: how many it will run."""
+
+    number: int
+    stage: str
+    kind: str
+    first: int
+    count: int
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """values (rows, builds) and status (builds,); for kind "draws" the rows are measures, settings, ran_out."""
+
+    values: np.ndarray
+    status: np.ndarray
+
+
+class StudyWork:
+    """A study on its geometry, ready to run: made once, read-only afterwards, shared by the threads."""
+
+    def __init__(self, geometry, study):
+        self.geometry, self.study = geometry, study
+        self.stages = ("before", "after") if study.alignment is not None else ("before",)
+        self.method = METHODS[study.method]
+        self.after = Response(geometry, study, stage=self.stages[-1])
+        self.model = self.after.model
+
+    @cached_property
+    def before(self) -> Response:
+        return self.after if len(self.stages) == 1 else Response(self.geometry, self.study, stage="before")
+
+    @cached_property
+    def tasks(self) -> tuple[Task, ...]:
+        """All tasks in order; the same study always gives the same list."""
+        found = []
+        for stage in reversed(self.stages):
+            cuts = [("effects", 0, 1)]
+            if self.study.method in SAMPLED:
+                cuts += [("draws", first, count) for first, count in self._cuts()]
+            elif self.study.method == "worst":
+                cuts.append(("worst", 0, 1))
+            if stage == self.stages[-1]:
+                cuts.append(("curves", 0, 1))
+            found += [(stage, *cut) for cut in cuts]
+        return tuple(Task(i, *task) for i, task in enumerate(found))
+
+    def _cuts(self):
+        block = self.method.block(self.model.problem)
+        blocks = self.method.builds(self.model.problem, self.study.size) // block
+        step = max(1, BUILDS_PER_TASK // block)
+        return [(first, min(step, blocks - first)) for first in range(0, blocks, step)]
+
+    def response(self, stage) -> Response:
+        return self.after if stage == self.stages[-1] else self.before
+
+    def run(self, task: Task) -> Outcome:
+        """Do one task."""
+        return getattr(self, f"_run_{task.kind}")(task)
+
+    def _run_effects(self, task):
+        errors, _ = linear.steps(self.model.field.sd())
+        found = self.stepless(task.stage).evaluate(errors)
+        return Outcome(found.positions, found.status)
+
+    def stepless(self, stage) -> Response:
+        """The response that the linear model is taken of: adjusters without steps."""
+        if not any(a.step_mm for a in self.study.alignment or ()):
+            return self.response(stage)
+        return self._stepless if stage == "after" else self.response(stage)
+
+    @cached_property
+    def _stepless(self):
+        return Response(self.geometry, self.study, stage="after", stepless=True)
+
+    def _run_draws(self, task):
+        unit = self.method.draw(
+            self.model.problem, size=self.study.size, seed=self.study.seed, first=task.first, count=task.count
+        )
+        rule = self.model.field.walk if getattr(self.method, "WALKS", False) else self.model.field.to_errors
+        found = self.response(task.stage).evaluate(rule(unit.T))
+        return Outcome(np.concatenate((found.values, found.settings, found.ran_out)), found.status)
+
+    def _run_worst(self, task):
+        response = self.response(task.stage)
+        found = self.method.search(lambda e: response.evaluate(e).values, self.model.field, seed=self.study.seed)
+        rows = np.concatenate((found.values[:, :, None], found.errors), axis=2)
+        count = np.full((1, rows.shape[2]), float(found.builds))
+        return Outcome(np.concatenate((rows.reshape(-1, rows.shape[2]), count)), np.zeros(rows.shape[2], np.uint8))
+
+    # --- curves
+
+    @cached_property
+    def curve_measures(self) -> tuple[Measure, ...]:
+        """The measures of the curves: each of CURVE_KEYS swept as far as the nominal reaches (at most CURVE_TRAVEL)."""
+        found = []
+        for axis, keys in CURVE_KEYS.items():
+            reach = self._reach(axis)
+            if reach:
+                steps = tuple(float(x) for x in np.linspace(-reach, reach, CURVE_POSITIONS))
+                found += [Measure(f"{axis}:{key}", key, "left", 0.0, 0.0, 0.0, axis, steps, "range", None) for key in keys]
+        return tuple(found)
+
+    def _reach(self, axis):
+        if axis == "rack" and not self.after.hands["left"].corner.has_rack:
+            return 0.0
+        travel = CURVE_TRAVEL[axis]
+        for _ in range(4):
+            try:
+                for end in (-travel, travel):
+                    at = {"bump": 0.0, "roll": 0.0, "rack": 0.0} | {axis: end}
+                    self.after.hands["left"].station(Spot(at["bump"], at["roll"], at["rack"]))
+                return travel
+            except PositionError:
+                travel /= 2.0
+        return 0.0
+
+    def _run_curves(self, task):
+        asked = SimpleNamespace(
+            errors=self.study.errors, alignment=self.study.alignment, sides=self.study.sides, jigs=self.study.jigs,
+            measures=self.curve_measures,
+        )  # fmt: skip
+        response = Response(self.geometry, asked, stage=task.stage)
+        scalars = Problem(np.zeros(self.model.scalars, int), 1)
+        unit = spread.draw(scalars, size=CURVE_BUILDS, seed=self.study.seed + 1, first=0, count=CURVE_BUILDS)
+        errors = np.concatenate((np.zeros((self.model.scalars, 1)), self.model.field.to_errors(unit.T)), axis=1)
+        found = response.evaluate(errors)
+        return Outcome(found.positions, found.status)
+
+    @cached_property
+    def position_slices(self) -> tuple[slice, ...]:
+        """Rows of an "effects" outcome that belong to each measure."""
+        counts = np.cumsum([0] + [len(requests_of(m)) for m in self.study.measures])
+        return tuple(slice(int(a), int(b)) for a, b in zip(counts[:-1], counts[1:], strict=True))

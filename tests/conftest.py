@@ -1,0 +1,25 @@
+"""Settings shared by all tests: the same random cases on every run, and no time limit per case."""
+
+import tomllib
+from pathlib import Path
+
+import pytest
+from hypothesis import HealthCheck, settings
+
+settings.register_profile(
+    "repeatable",
+    derandomize=True,
+    deadline=None,
+    max_examples=12,
+    database=None,
+    suppress_health_check=[HealthCheck.too_slow, HealthCheck.data_too_large],
+)
+settings.load_profile("repeatable")
+
+REFERENCES = Path(__file__).parent / "references"
+
+
+@pytest.fixture(scope="session")
+def kinematics() -> dict:
+    """Outside values of `references/kinematics.toml`."""
+    return tomllib.loads((REFERENCES / "kinematics.toml").read_text(encoding="utf-8"))
