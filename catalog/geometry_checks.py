@@ -47,8 +47,8 @@ def _check_links(table: GeometryTable, linkage: Linkage, source: str) -> None:
         refuse(
             source,
             "links",
-            f"has {count} links ({names}): {table.linkage} needs exactly {linkage.n_links}, the linkage is {which}"
-            f" ({linkage.count_rule})",
+            f"has {count} links ({names}): {table.linkage} needs exactly {linkage.n_links},"
+            f" the linkage is {which} ({linkage.count_rule})",
             _count_remedy(linkage),
         )
     for name in table.links:

@@ -44,7 +44,7 @@ def _check_side(table: GeometryTable, side_points: Side, *, side: str, prefix: s
     outer = [f"{name}_outer" for name in table.links if not linkage.whole_axle]
     for name in [*linkage.on_wheel_side, *outer]:
         if sign * points[name][1] <= 0.0:
-            rule = f"lies across the centre plane from its {side} wheel (y = {points[name][1]:g} mm, left positive)"
+            rule = f"is across the car from its {side} wheel (y = {points[name][1]:g} mm, left positive)"
             refuse(source, _point_key(table, name, prefix), rule, "check its sign, side and axes.")
     for name, point in points.items():
         if not math.dist(point, side_points.wheel.centre) <= FARTHEST_MM:

@@ -146,7 +146,8 @@ COMMENT ON COLUMN spreads."good_high" IS 'upper 95 % bound of good_share';
 COMMENT ON COLUMN spreads."builds" IS 'builds run';
 COMMENT ON COLUMN spreads."unassembled" IS 'builds without value';
 COMMENT ON COLUMN spreads."rss" IS 'root-sum-square stack, +-, unit of the measure';
-COMMENT ON COLUMN spreads."worst_case" IS 'worst-case stack, +-, unit of the measure';
+COMMENT ON COLUMN spreads."worst_low" IS 'lowest value of the worst-case stack of the linear model, unit of the measure';
+COMMENT ON COLUMN spreads."worst_high" IS 'highest value of the worst-case stack of the linear model, unit of the measure';
 COMMENT ON COLUMN spreads."final" IS 'whether it is the stage at which the answer is read';
 
 CREATE OR REPLACE VIEW critical_pivots AS

@@ -82,6 +82,18 @@ class StudyWork:
         step = max(1, BUILDS_PER_TASK // block)
         return [(first, min(step, blocks - first)) for first in range(0, blocks, step)]
 
+    def builds(self, task: Task) -> int:
+        """How many builds a task runs (of a search: those it starts with, since it goes on until it has found)."""
+        if task.kind == "draws":
+            return task.count * self.method.block(self.model.problem)
+        if task.kind == "curves":
+            return CURVE_BUILDS + 1
+        return 1 + 2 * self.model.scalars
+
+    def first_build(self, task: Task) -> int:
+        """Number of a task's first build among those of its kind."""
+        return task.first * self.method.block(self.model.problem) if task.kind == "draws" else 0
+
     def response(self, stage) -> Response:
         return self.after if stage == self.stages[-1] else self.before
 

@@ -6,6 +6,7 @@ R/(3.76 cp) for a ball, so that cp = 1 leaves 99.73 % inside each.
 """
 
 from dataclasses import dataclass, replace
+from functools import cache
 
 import numpy as np
 from scipy.special import gammainc, gammaincinv, ndtr, ndtri
@@ -193,12 +194,17 @@ def _line_moments(zone: Zone, half: float, shift: float) -> tuple[float, float]:
         return shift, sigma**2
     peak = min(max(shift, low), high)
     low, high = max(low, peak - 12 * sigma), min(high, peak + 12 * sigma)
-    nodes, weights = np.polynomial.legendre.leggauss(160)
+    nodes, weights = _gauss()
     x = (low + high) / 2 + (high - low) / 2 * nodes
     weights = weights * np.exp(-(((x - shift) ** 2) - (peak - shift) ** 2) / (2 * sigma**2))
     weights /= weights.sum()
     centre = weights @ x
     return float(centre), float(weights @ (x - centre) ** 2)
+
+
+@cache
+def _gauss() -> tuple[np.ndarray, np.ndarray]:
+    return np.polynomial.legendre.leggauss(160)
 
 
 def _line_accepted(zone: Zone, half: float, shift: float) -> float:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from tests.independent import Body, Link, Spring, Tyre, ground_of, mirrored, spin_axis
+from tests.independent import Body, Link, Spring, Tyre, ground_of, spin_axis
 
 FLIP = np.array([1.0, -1.0, 1.0])
 ARM_POINTS = {
@@ -86,6 +86,7 @@ def tilted(spin, first: float, second: float):
     normal = np.array([1.0, 0.0, 0.0]) - spin[0] * spin
     normal = normal / np.linalg.norm(normal)
     other = np.cross(spin, normal)
+    other = other * np.sign(other[np.argmax(np.abs(other))])
     moved = spin + np.cross(first * normal + second * other, spin)
     return moved / np.linalg.norm(moved)
 
@@ -181,16 +182,32 @@ def five_link(links, wheel, *, steer_link=None, points=None, errors=None, steere
 
 
 def semi_trailing_arm(points, wheel, *, errors=None) -> Body:
+    """The arm's own hinge is laid on the line of the chassis pivots, centred; what it carries goes with it."""
     parts = Parts(points, errors)
+    own = parts.of("arm", "hinge_inner"), parts.of("arm", "hinge_outer")
+    held = parts.of("chassis", "hinge_inner"), parts.of("chassis", "hinge_outer")
+    turn = shortest_turn(own[1] - own[0], held[1] - held[0])
+    tyre, spring = tyre_of(wheel, parts, "arm"), spring_of(parts, "upright")
+
+    def laid(point):
+        return (held[0] + held[1]) / 2 + turn @ (point - (own[0] + own[1]) / 2)
+
     return finished(
         points,
         wheel,
-        (tyre_of(wheel, parts, "arm"),),
+        (Tyre(laid(tyre.centre), turn @ tyre.spin, tyre.radius),),
         errors,
         links=(),
-        hinge=(parts.of("chassis", "hinge_inner"), parts.of("chassis", "hinge_outer")),
-        spring=spring_of(parts, "upright"),
+        hinge=held,
+        spring=spring and Spring(spring.chassis, laid(spring.outer)),
     )
+
+
+def shortest_turn(one, other) -> np.ndarray:
+    one, other = one / np.linalg.norm(one), other / np.linalg.norm(other)
+    across = np.cross(one, other)
+    skew = np.array([[0, -across[2], across[1]], [across[2], 0, -across[0]], [-across[1], across[0], 0]])
+    return np.eye(3) + skew + skew @ skew / (1 + one @ other)
 
 
 def solid_axle(links, left_wheel, right_wheel, *, points=None, errors=None) -> Body:
@@ -198,7 +215,7 @@ def solid_axle(links, left_wheel, right_wheel, *, points=None, errors=None) -> B
     parts = Parts(points or {}, errors)
     right_wheel = dict(right_wheel, right=True)
     tyres = tyre_of(left_wheel, parts, "axle", "_left"), tyre_of(right_wheel, parts, "axle", "_right")
-    body = finished(
+    return finished(
         points,
         left_wheel,
         tyres,
@@ -206,8 +223,3 @@ def solid_axle(links, left_wheel, right_wheel, *, points=None, errors=None) -> B
         links=rods(parts, links, None, "axle", False),
         spring=spring_of(parts, "upright"),
     )
-    return body
-
-
-def right_of(body: Body) -> Body:
-    return mirrored(body)

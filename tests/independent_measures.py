@@ -7,12 +7,14 @@ lengths in mm, rates per mm of road rise.
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
-from tests.independent import Body, Pose, at_home, held_length, mirrored, plane, pose, solve, spring_square, steered
+from tests.independent import Body, Pose, held_length, mirrored, plane, pose, solve, spring_square, steered
 
-BUMP_STEP_MM = 0.8
-ROLL_STEP = 0.0015
+BUMP_STEP_MM = 1.0
+ROLL_STEP = 0.0016
 RACK_STEP_MM = 0.5
 FLAT_PER_M = 1e-6
 CROSSED = ("camber_deg", "caster_deg", "kingpin_deg", "toe_deg", "scrub_radius_mm", "trail_mm", "half_track_mm")
@@ -253,10 +255,40 @@ def evaluate(left: Body, right: Body, vehicle: dict, *, bump_mm=0.0, roll_deg=0.
     """All values of an axle. `right` stands mirrored, as a left corner; a solid axle is given once as `left`."""
     roll = np.radians(roll_deg)
     wheel = len(left.tyres) - 1
+    if wheel:  # the right spring of a solid axle is the mirror image of the left one
+        right = replace(mirrored(left), spring=left.spring)
     one = Corner(left, bump_mm=bump_mm, roll_rad=roll, rack_mm=rack_mm)
-    two = Corner(mirrored(left) if wheel else right, bump_mm=bump_mm, roll_rad=-roll, rack_mm=-rack_mm, wheel=wheel)
+    two = Corner(right, bump_mm=bump_mm, roll_rad=-roll, rack_mm=-rack_mm, wheel=wheel)
     sides = side_values(one, vehicle), side_values(two, vehicle)
     return {"left": sides[0], "right": sides[1], "axle": axle_values(one, two, sides, vehicle)}
 
 
-__all__ = ["Corner", "at_home", "evaluate", "side_values"]
+FRONT_CENTRE = ("swing_arm_mm", "front_view_ic_y_mm", "front_view_ic_z_mm")
+SIDE_CENTRE = ("side_view_ic_x_mm", "side_view_ic_z_mm")
+
+
+def allowance(key: str, values: dict, axle: dict) -> float:
+    """How far a value by differences may be off: rates are good to about 1e-11 per mm, quotients of them to less."""
+    size = max(1.0, abs(values[key]))
+    if key in FRONT_CENTRE:
+        return 1e-7 * size + 1e-10 * size * abs(values["swing_arm_mm"])
+    if key in SIDE_CENTRE:
+        return 1e-7 * size + 1e-10 * size * abs(values["side_view_ic_x_mm"])
+    if key == "roll_centre_offset_mm":
+        return 1e-7 * size * abs(axle["track_mm"] / max(1e-6, abs(axle["slopes"])))
+    return 1e-9 if key.endswith("_per_mm") else 2e-7 * size
+
+
+def disagreements(mine: dict, theirs: dict) -> list[str]:
+    """Keys whose values differ by more than their allowance; what is undefined must be so in both."""
+    slopes = sum(mine[side].get("track_change_mm_per_mm", 0.0) for side in ("left", "right"))
+    found = []
+    for side in ("left", "right", "axle"):
+        for key in sorted(set(mine[side]) | set(theirs[side])):
+            one, two = mine[side].get(key), theirs[side].get(key, "missing")
+            if one is None and two is None:
+                continue
+            unlike = two == "missing" or one is None or two is None
+            if unlike or abs(one - two) > allowance(key, mine[side], mine["axle"] | {"slopes": slopes}):
+                found.append(f"{side} {key}: independent {one}, program {two}")
+    return found

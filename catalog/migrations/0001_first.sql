@@ -5,9 +5,7 @@ CREATE SCHEMA IF NOT EXISTS kept;
 CREATE TYPE kept.study_state AS ENUM ('queued', 'running', 'done', 'failed', 'cancelled');
 
 CREATE TABLE kept.schema_migrations (
-    "version" INTEGER PRIMARY KEY,
-    "name" VARCHAR NOT NULL,
-    "applied_at" TIMESTAMP NOT NULL,
+    "version" INTEGER PRIMARY KEY, "name" VARCHAR NOT NULL, "applied_at" TIMESTAMP NOT NULL,
     "program" VARCHAR NOT NULL
 );
 COMMENT ON TABLE kept.schema_migrations IS 'Which numbered migrations made this file';
@@ -23,29 +21,18 @@ COMMENT ON TABLE kept.schema_views IS 'One row: which text of the public views s
 COMMENT ON COLUMN kept.schema_views."sha256" IS 'hex digest of views.sql';
 
 CREATE TABLE kept.geometries (
-    "id" INTEGER PRIMARY KEY,
-    "name" VARCHAR NOT NULL UNIQUE
+    "id" INTEGER PRIMARY KEY, "name" VARCHAR NOT NULL UNIQUE
 );
 COMMENT ON TABLE kept.geometries IS 'Names of geometries; what they are stands in their revisions';
 COMMENT ON COLUMN kept.geometries."id" IS 'number of the geometry';
 COMMENT ON COLUMN kept.geometries."name" IS 'name, as in its file';
 
 CREATE TABLE kept.revisions (
-    "id" INTEGER PRIMARY KEY,
-    "geometry_id" INTEGER NOT NULL REFERENCES kept.geometries (id),
-    "number" INTEGER NOT NULL,
-    "content_hash" VARCHAR NOT NULL,
-    "linkage" VARCHAR NOT NULL,
-    "axle" VARCHAR NOT NULL,
-    "given_axes" VARCHAR NOT NULL,
-    "given_units" VARCHAR NOT NULL,
-    "given_side" VARCHAR NOT NULL,
-    "note" VARCHAR NOT NULL,
-    "created" TIMESTAMP NOT NULL,
-    "by_whom" VARCHAR NOT NULL,
-    "why" VARCHAR NOT NULL,
-    "text" VARCHAR NOT NULL,
-    "record" JSON NOT NULL,
+    "id" INTEGER PRIMARY KEY, "geometry_id" INTEGER NOT NULL REFERENCES kept.geometries (id),
+    "number" INTEGER NOT NULL, "content_hash" VARCHAR NOT NULL, "linkage" VARCHAR NOT NULL,
+    "axle" VARCHAR NOT NULL, "given_axes" VARCHAR NOT NULL, "given_units" VARCHAR NOT NULL,
+    "given_side" VARCHAR NOT NULL, "note" VARCHAR NOT NULL, "created" TIMESTAMP NOT NULL,
+    "by_whom" VARCHAR NOT NULL, "why" VARCHAR NOT NULL, "text" VARCHAR NOT NULL, "record" JSON NOT NULL,
     UNIQUE (geometry_id, number), UNIQUE (geometry_id, content_hash)
 );
 COMMENT ON TABLE kept.revisions IS 'Registered revisions of geometries; a row never changes';
@@ -66,12 +53,8 @@ COMMENT ON COLUMN kept.revisions."text" IS 'the file as it was given';
 COMMENT ON COLUMN kept.revisions."record" IS 'validated content: ISO axes, mm, degrees, car coordinates';
 
 CREATE TABLE kept.points (
-    "revision_id" INTEGER NOT NULL,
-    "side" VARCHAR NOT NULL,
-    "point" VARCHAR NOT NULL,
-    "x_mm" DOUBLE NOT NULL,
-    "y_mm" DOUBLE NOT NULL,
-    "z_mm" DOUBLE NOT NULL
+    "revision_id" INTEGER NOT NULL, "side" VARCHAR NOT NULL, "point" VARCHAR NOT NULL,
+    "x_mm" DOUBLE NOT NULL, "y_mm" DOUBLE NOT NULL, "z_mm" DOUBLE NOT NULL
 );
 COMMENT ON TABLE kept.points IS 'Points and wheel centres of every revision at design';
 COMMENT ON COLUMN kept.points."revision_id" IS 'revision';
@@ -82,10 +65,7 @@ COMMENT ON COLUMN kept.points."y_mm" IS 'mm, to the left of the centre plane';
 COMMENT ON COLUMN kept.points."z_mm" IS 'mm, up';
 
 CREATE TABLE kept.revision_measures (
-    "revision_id" INTEGER NOT NULL,
-    "side" VARCHAR NOT NULL,
-    "key" VARCHAR NOT NULL,
-    "value" DOUBLE,
+    "revision_id" INTEGER NOT NULL, "side" VARCHAR NOT NULL, "key" VARCHAR NOT NULL, "value" DOUBLE,
     "unit" VARCHAR NOT NULL
 );
 COMMENT ON TABLE kept.revision_measures IS 'Measures of every revision at design';
@@ -96,27 +76,12 @@ COMMENT ON COLUMN kept.revision_measures."value" IS 'value in its unit; NULL whe
 COMMENT ON COLUMN kept.revision_measures."unit" IS 'unit of the value; 1 for a plain ratio';
 
 CREATE TABLE kept.studies (
-    "id" INTEGER PRIMARY KEY,
-    "title" VARCHAR NOT NULL,
-    "state" kept.study_state NOT NULL,
-    "method" VARCHAR NOT NULL,
-    "size" BIGINT NOT NULL,
-    "seed" BIGINT NOT NULL,
-    "sides" VARCHAR NOT NULL,
-    "revision_id" INTEGER NOT NULL,
-    "text" VARCHAR NOT NULL,
-    "version" VARCHAR NOT NULL,
-    "created" TIMESTAMP NOT NULL,
-    "by_whom" VARCHAR NOT NULL,
-    "worker" VARCHAR,
-    "heartbeat" TIMESTAMP,
-    "started" TIMESTAMP,
-    "finished" TIMESTAMP,
-    "done_builds" BIGINT NOT NULL DEFAULT 0,
-    "total_builds" BIGINT,
-    "error" VARCHAR,
-    "result_hash" VARCHAR,
-    "final_stage" VARCHAR,
+    "id" INTEGER PRIMARY KEY, "title" VARCHAR NOT NULL, "state" kept.study_state NOT NULL,
+    "method" VARCHAR NOT NULL, "size" BIGINT NOT NULL, "seed" BIGINT NOT NULL, "sides" VARCHAR NOT NULL,
+    "revision_id" INTEGER NOT NULL, "text" VARCHAR NOT NULL, "version" VARCHAR NOT NULL,
+    "created" TIMESTAMP NOT NULL, "by_whom" VARCHAR NOT NULL, "worker" VARCHAR, "heartbeat" TIMESTAMP,
+    "started" TIMESTAMP, "finished" TIMESTAMP, "done_builds" BIGINT NOT NULL DEFAULT 0,
+    "total_builds" BIGINT, "error" VARCHAR, "result_hash" VARCHAR, "final_stage" VARCHAR,
     "ranked" BOOLEAN NOT NULL DEFAULT false
 );
 COMMENT ON TABLE kept.studies IS 'Queued, running and finished studies; a finished one never changes';
@@ -144,13 +109,8 @@ COMMENT ON COLUMN kept.studies."final_stage" IS 'stage at which the answer is re
 COMMENT ON COLUMN kept.studies."ranked" IS 'whether the result holds a ranking';
 
 CREATE TABLE kept.chunks (
-    "study_id" INTEGER,
-    "stage" VARCHAR,
-    "chunk_no" INTEGER,
-    "first_build" BIGINT NOT NULL,
-    "n_builds" BIGINT NOT NULL,
-    "seconds" DOUBLE,
-    "hash" VARCHAR NOT NULL,
+    "study_id" INTEGER, "stage" VARCHAR, "chunk_no" INTEGER, "first_build" BIGINT NOT NULL,
+    "n_builds" BIGINT NOT NULL, "seconds" DOUBLE, "hash" VARCHAR NOT NULL,
     PRIMARY KEY (study_id, stage, chunk_no)
 );
 COMMENT ON TABLE kept.chunks IS 'Chunks of builds that are finished and kept';
@@ -163,13 +123,8 @@ COMMENT ON COLUMN kept.chunks."seconds" IS 'time taken, s';
 COMMENT ON COLUMN kept.chunks."hash" IS 'sha256 (hex) over its values';
 
 CREATE TABLE kept.build_values (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR NOT NULL,
-    "chunk_no" INTEGER NOT NULL,
-    "kind" VARCHAR NOT NULL,
-    "measure_no" SMALLINT NOT NULL,
-    "build_no" BIGINT NOT NULL,
-    "value" DOUBLE
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR NOT NULL, "chunk_no" INTEGER NOT NULL,
+    "kind" VARCHAR NOT NULL, "measure_no" INTEGER NOT NULL, "build_no" BIGINT NOT NULL, "value" DOUBLE
 );
 COMMENT ON TABLE kept.build_values IS 'One value of one build; no key, for size and speed';
 COMMENT ON COLUMN kept.build_values."study_id" IS 'study';
@@ -181,11 +136,8 @@ COMMENT ON COLUMN kept.build_values."build_no" IS 'number of the build from 0';
 COMMENT ON COLUMN kept.build_values."value" IS 'in the unit of the measure; NULL where there is none';
 
 CREATE TABLE kept.builds (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR NOT NULL,
-    "chunk_no" INTEGER NOT NULL,
-    "build_no" BIGINT NOT NULL,
-    "status" UTINYINT NOT NULL
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR NOT NULL, "chunk_no" INTEGER NOT NULL,
+    "build_no" BIGINT NOT NULL, "status" UTINYINT NOT NULL
 );
 COMMENT ON TABLE kept.builds IS 'Outcome of each build; no key, for size and speed';
 COMMENT ON COLUMN kept.builds."study_id" IS 'study';
@@ -195,15 +147,9 @@ COMMENT ON COLUMN kept.builds."build_no" IS 'number of the build from 0';
 COMMENT ON COLUMN kept.builds."status" IS '0: assembled; else why it was not';
 
 CREATE TABLE kept.study_facts (
-    "study_id" INTEGER NOT NULL,
-    "builds" JSON,
-    "dropped_blocks" JSON,
-    "withheld" JSON,
-    "unassembled" JSON,
-    "perfect" JSON,
-    "notes" JSON,
-    "seconds" JSON,
-    "stages" JSON
+    "study_id" INTEGER NOT NULL, "builds" JSON, "dropped_blocks" JSON, "withheld" JSON, "unassembled" JSON,
+    "perfect" JSON, "notes" JSON, "seconds" JSON, "good_share" DOUBLE, "good_low" DOUBLE,
+    "good_high" DOUBLE, "all_cars" DOUBLE, "version" VARCHAR, "stages" JSON
 );
 COMMENT ON TABLE kept.study_facts IS 'What is said of a finished study beside its tables';
 COMMENT ON COLUMN kept.study_facts."study_id" IS 'study';
@@ -214,32 +160,19 @@ COMMENT ON COLUMN kept.study_facts."unassembled" IS 'builds that could not be as
 COMMENT ON COLUMN kept.study_facts."perfect" IS 'features held perfect: no error is given for them';
 COMMENT ON COLUMN kept.study_facts."notes" IS 'remarks, a list of texts';
 COMMENT ON COLUMN kept.study_facts."seconds" IS 'time taken, s';
+COMMENT ON COLUMN kept.study_facts."good_share" IS 'share of all builds inside all limits, 0 to 1';
+COMMENT ON COLUMN kept.study_facts."good_low" IS 'lower 95 % bound of good_share';
+COMMENT ON COLUMN kept.study_facts."good_high" IS 'upper 95 % bound of good_share';
+COMMENT ON COLUMN kept.study_facts."all_cars" IS 'chance that all of the stated number of cars are inside all limits, 0 to 1';
+COMMENT ON COLUMN kept.study_facts."version" IS 'version of the program that ran it';
 COMMENT ON COLUMN kept.study_facts."stages" IS 'stages that were run';
 
 CREATE TABLE kept.ranking (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR,
-    "measure_no" INTEGER,
-    "measure" VARCHAR,
-    "unit" VARCHAR,
-    "source" VARCHAR,
-    "rank" INTEGER,
-    "st" DOUBLE,
-    "st_low" DOUBLE,
-    "st_high" DOUBLE,
-    "s1" DOUBLE,
-    "s1_low" DOUBLE,
-    "s1_high" DOUBLE,
-    "linear_share" DOUBLE,
-    "mu_star" DOUBLE,
-    "mu_star_low" DOUBLE,
-    "mu_star_high" DOUBLE,
-    "effect" DOUBLE[],
-    "effect_axes" VARCHAR[],
-    "effect_unit" VARCHAR,
-    "effect_per_mm" DOUBLE,
-    "tied" BOOLEAN,
-    "verdict" VARCHAR
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "measure_no" INTEGER, "measure" VARCHAR, "unit" VARCHAR,
+    "source" VARCHAR, "rank" INTEGER, "st" DOUBLE, "st_low" DOUBLE, "st_high" DOUBLE, "s1" DOUBLE,
+    "s1_low" DOUBLE, "s1_high" DOUBLE, "linear_share" DOUBLE, "mu_star" DOUBLE, "mu_star_low" DOUBLE,
+    "mu_star_high" DOUBLE, "effect" DOUBLE[], "effect_axes" VARCHAR[], "effect_unit" VARCHAR,
+    "effect_per_mm" DOUBLE, "tied" BOOLEAN, "verdict" VARCHAR
 );
 COMMENT ON TABLE kept.ranking IS 'What each error source does to each measure';
 COMMENT ON COLUMN kept.ranking."study_id" IS 'study';
@@ -267,37 +200,12 @@ COMMENT ON COLUMN kept.ranking."tied" IS 'not told apart from the one ranked jus
 COMMENT ON COLUMN kept.ranking."verdict" IS 'hold | watch | open; NULL without limits';
 
 CREATE TABLE kept.stats (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR,
-    "measure_no" INTEGER,
-    "measure" VARCHAR,
-    "of" VARCHAR,
-    "unit" VARCHAR,
-    "side" VARCHAR,
-    "position" JSON,
-    "nominal" DOUBLE,
-    "mean" DOUBLE,
-    "sd" DOUBLE,
-    "low" DOUBLE,
-    "high" DOUBLE,
-    "q005" DOUBLE,
-    "q025" DOUBLE,
-    "q05" DOUBLE,
-    "q25" DOUBLE,
-    "q50" DOUBLE,
-    "q75" DOUBLE,
-    "q95" DOUBLE,
-    "q975" DOUBLE,
-    "q995" DOUBLE,
-    "limit_low" DOUBLE,
-    "limit_high" DOUBLE,
-    "good_share" DOUBLE,
-    "good_low" DOUBLE,
-    "good_high" DOUBLE,
-    "builds" BIGINT,
-    "unassembled" BIGINT,
-    "rss" DOUBLE,
-    "worst_case" DOUBLE
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "measure_no" INTEGER, "measure" VARCHAR, "of" VARCHAR,
+    "unit" VARCHAR, "side" VARCHAR, "position" JSON, "nominal" DOUBLE, "mean" DOUBLE, "sd" DOUBLE,
+    "low" DOUBLE, "high" DOUBLE, "q005" DOUBLE, "q025" DOUBLE, "q05" DOUBLE, "q25" DOUBLE, "q50" DOUBLE,
+    "q75" DOUBLE, "q95" DOUBLE, "q975" DOUBLE, "q995" DOUBLE, "limit_low" DOUBLE, "limit_high" DOUBLE,
+    "good_share" DOUBLE, "good_low" DOUBLE, "good_high" DOUBLE, "builds" BIGINT, "unassembled" BIGINT,
+    "rss" DOUBLE, "worst_low" DOUBLE, "worst_high" DOUBLE
 );
 COMMENT ON TABLE kept.stats IS 'Distribution of each measure over the builds';
 COMMENT ON COLUMN kept.stats."study_id" IS 'study';
@@ -330,14 +238,11 @@ COMMENT ON COLUMN kept.stats."good_high" IS 'upper 95 % bound of good_share';
 COMMENT ON COLUMN kept.stats."builds" IS 'builds run';
 COMMENT ON COLUMN kept.stats."unassembled" IS 'builds without value';
 COMMENT ON COLUMN kept.stats."rss" IS 'root-sum-square stack, +-, unit of the measure';
-COMMENT ON COLUMN kept.stats."worst_case" IS 'worst-case stack, +-, unit of the measure';
+COMMENT ON COLUMN kept.stats."worst_low" IS 'lowest value of the worst-case stack of the linear model, unit of the measure';
+COMMENT ON COLUMN kept.stats."worst_high" IS 'highest value of the worst-case stack of the linear model, unit of the measure';
 
 CREATE TABLE kept.histogram (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR,
-    "measure_no" INTEGER,
-    "left" DOUBLE,
-    "right" DOUBLE,
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "measure_no" INTEGER, "left" DOUBLE, "right" DOUBLE,
     "count" BIGINT
 );
 COMMENT ON TABLE kept.histogram IS 'Counts of builds by value';
@@ -349,19 +254,8 @@ COMMENT ON COLUMN kept.histogram."right" IS 'right edge, unit of the measure';
 COMMENT ON COLUMN kept.histogram."count" IS 'builds in between';
 
 CREATE TABLE kept.curves (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR,
-    "axis" VARCHAR,
-    "x" DOUBLE,
-    "key" VARCHAR,
-    "unit" VARCHAR,
-    "side" VARCHAR,
-    "nominal" DOUBLE,
-    "q05" DOUBLE,
-    "q25" DOUBLE,
-    "q50" DOUBLE,
-    "q75" DOUBLE,
-    "q95" DOUBLE
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "axis" VARCHAR, "x" DOUBLE, "key" VARCHAR, "unit" VARCHAR,
+    "side" VARCHAR, "nominal" DOUBLE, "q05" DOUBLE, "q25" DOUBLE, "q50" DOUBLE, "q75" DOUBLE, "q95" DOUBLE
 );
 COMMENT ON TABLE kept.curves IS 'Measures along a sweep: nominal and quantiles of builds';
 COMMENT ON COLUMN kept.curves."study_id" IS 'study';
@@ -379,20 +273,9 @@ COMMENT ON COLUMN kept.curves."q75" IS 'quantile 0.75, unit of the measure';
 COMMENT ON COLUMN kept.curves."q95" IS 'quantile 0.95, unit of the measure';
 
 CREATE TABLE kept.demand (
-    "study_id" INTEGER NOT NULL,
-    "adjuster" VARCHAR,
-    "by" VARCHAR,
-    "unit" VARCHAR,
-    "q005" DOUBLE,
-    "q05" DOUBLE,
-    "q25" DOUBLE,
-    "q50" DOUBLE,
-    "q75" DOUBLE,
-    "q95" DOUBLE,
-    "q995" DOUBLE,
-    "low" DOUBLE,
-    "high" DOUBLE,
-    "ran_out_share" DOUBLE
+    "study_id" INTEGER NOT NULL, "adjuster" VARCHAR, "by" VARCHAR, "unit" VARCHAR, "q005" DOUBLE, "q025" DOUBLE,
+    "q05" DOUBLE, "q25" DOUBLE, "q50" DOUBLE, "q75" DOUBLE, "q95" DOUBLE, "q975" DOUBLE, "q995" DOUBLE, "low" DOUBLE,
+    "high" DOUBLE, "ran_out_share" DOUBLE
 );
 COMMENT ON TABLE kept.demand IS 'How far the workshop has to move each adjuster';
 COMMENT ON COLUMN kept.demand."study_id" IS 'study';
@@ -400,6 +283,8 @@ COMMENT ON COLUMN kept.demand."adjuster" IS 'what is set: ride_height, toe, camb
 COMMENT ON COLUMN kept.demand."by" IS 'what it is set by';
 COMMENT ON COLUMN kept.demand."unit" IS 'unit of the quantiles, mm or deg';
 COMMENT ON COLUMN kept.demand."q005" IS 'quantile 0.005, in unit';
+COMMENT ON COLUMN kept.demand."q025" IS '2.5 % quantile, unit of the adjuster';
+COMMENT ON COLUMN kept.demand."q975" IS '97.5 % quantile, unit of the adjuster';
 COMMENT ON COLUMN kept.demand."q05" IS 'quantile 0.05, in unit';
 COMMENT ON COLUMN kept.demand."q25" IS 'quantile 0.25, in unit';
 COMMENT ON COLUMN kept.demand."q50" IS 'quantile 0.5, in unit';
@@ -411,14 +296,8 @@ COMMENT ON COLUMN kept.demand."high" IS 'greatest, in unit';
 COMMENT ON COLUMN kept.demand."ran_out_share" IS 'share of builds at the stop, 0 to 1';
 
 CREATE TABLE kept.worst (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR,
-    "measure_no" INTEGER,
-    "direction" VARCHAR,
-    "value" DOUBLE,
-    "source" VARCHAR,
-    "axis" VARCHAR,
-    "error" DOUBLE
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "measure_no" INTEGER, "direction" VARCHAR, "value" DOUBLE,
+    "source" VARCHAR, "axis" VARCHAR, "error" DOUBLE
 );
 COMMENT ON TABLE kept.worst IS 'Worst builds found inside the zones';
 COMMENT ON COLUMN kept.worst."study_id" IS 'study';
@@ -431,11 +310,7 @@ COMMENT ON COLUMN kept.worst."axis" IS 'x, y, z | length | tilt_1, tilt_2';
 COMMENT ON COLUMN kept.worst."error" IS 'error of that scalar, mm or deg';
 
 CREATE TABLE kept.correlations (
-    "study_id" INTEGER NOT NULL,
-    "stage" VARCHAR,
-    "measure_a" VARCHAR,
-    "measure_b" VARCHAR,
-    "r" DOUBLE
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "measure_a" VARCHAR, "measure_b" VARCHAR, "r" DOUBLE
 );
 COMMENT ON TABLE kept.correlations IS 'Correlation of measures over the builds';
 COMMENT ON COLUMN kept.correlations."study_id" IS 'study';
@@ -443,3 +318,13 @@ COMMENT ON COLUMN kept.correlations."stage" IS 'before | after alignment';
 COMMENT ON COLUMN kept.correlations."measure_a" IS 'name of one measure';
 COMMENT ON COLUMN kept.correlations."measure_b" IS 'name of the other';
 COMMENT ON COLUMN kept.correlations."r" IS 'coefficient, -1 to 1';
+
+CREATE TABLE kept.failures (
+    "study_id" INTEGER NOT NULL, "stage" VARCHAR, "source" VARCHAR, "rank" INTEGER, "value" DOUBLE
+);
+COMMENT ON TABLE kept.failures IS 'What makes builds fail to assemble, where indices are withheld for it';
+COMMENT ON COLUMN kept.failures."study_id" IS 'study';
+COMMENT ON COLUMN kept.failures."stage" IS 'before | after alignment';
+COMMENT ON COLUMN kept.failures."source" IS 'PART.FEATURE';
+COMMENT ON COLUMN kept.failures."rank" IS '1 is the strongest';
+COMMENT ON COLUMN kept.failures."value" IS 'share of the variance of failing, or its mean absolute effect by the morris method';

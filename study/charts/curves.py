@@ -1,12 +1,17 @@
 """Bump, roll and steer curves: the nominal with the band of the builds."""
 
+from functools import cache
+
 import altair as alt
 
 from study.charts import tables as tb
 from study.charts import theme
+from study.charts.template import amount, as_chart, end, fill, label, rows, slot, template
 from study.charts.words import finite, key_name, quantity, unit_text
 
+# input: (in words, unit, what the curve is called after)
 AXES = {"bump": ("bump", "mm", "bump"), "roll": ("roll", "°", "roll"), "rack": ("rack travel", "mm", "steer")}
+_SIDES = {"left": (theme.BLUE, [1, 0]), "right": ("#b86e00", [6, 3]), "axle": (theme.GREEN, [1, 0])}
 _FIELDS = ("q05", "q25", "q50", "q75", "q95")
 
 
@@ -16,58 +21,79 @@ def curve_kinds(tables: tb.Tables) -> list[tuple[str, str]]:
     return sorted(present, key=lambda pair: list(AXES).index(pair[0]) if pair[0] in AXES else len(AXES))
 
 
-def curve(tables: tb.Tables, axis: str, key: str, *, width: int = 340, height: int = 200) -> alt.LayerChart | None:
-    """One measure along one input; a line per side (solid left, dashed right), bands of 50 and 90 % of the builds."""
-    rows = _rows(tables, axis, key)
-    if not rows:
+def curve(tables: tb.Tables, axis: str, key: str, **options) -> alt.LayerChart | None:
+    """`curve_spec` as a chart."""
+    return as_chart(curve_spec(tables, axis, key, **options))
+
+
+def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, height: int = 200) -> dict | None:
+    """One measure along one input: a line per side (solid left, dashed right) with the bands of 50 and 90 % of the
+    builds; a second side's band is drawn by its dashed edges, or left out where both sides are alike."""
+    found = curve_rows(tables, axis, key)
+    if not found:
         return None
-    words, unit_x, kind = AXES.get(axis, (axis, "", axis))
-    sides = list(dict.fromkeys(row["side"] for row in rows))
-    unit = next(row["unit"] for row in rows)
-    chart = _layers(rows, sides, f"{words}, {unit_x}", unit_text(unit))
-    return theme.dress(
-        chart.properties(width=width, height=height),
-        title=f"{key_name(key).capitalize()} in {kind}", subtitle="line: nominal; bands: middle 50 and 90 % of the builds",
-        description=_description(rows, key, words, unit),
+    words, unit_x, called = AXES.get(axis, (axis, "", axis))
+    alike = _alike(found)
+    found = [row for row in found if not (alike and row["side"] == "right")]
+    sides = [side for side in _SIDES if any(row["side"] == side for row in found)]
+    unit = found[0]["unit"]
+    along = unit_text(unit)
+    return fill(
+        _template(len(sides) > 1),
+        data={"line": found, "band": [row for row in found if row["side"] == sides[0]],
+              "edges": [row for row in found if row["side"] != sides[0]]},
+        slots={"sides": sides, "colours": [_SIDES[side][0] for side in sides],
+               "dashes": [_SIDES[side][1] for side in sides], "x": [f"{words}, {unit_x}"]},
+        title=f"{key_name(key).capitalize()} in {called}" + (f", {along}" if along else ""),
+        subtitle=("left, right alike; " if alike else "") + "line: nominal; bands: middle 50 and 90 % of builds",
+        description=_description(found, key, words, unit), width=width, height=height,
     )
 
 
-def _rows(tables: tb.Tables, axis: str, key: str) -> list[dict]:
-    rows = [row for row in tables.get("curves", []) if row.get("axis") == axis and row.get("key") == key]
-    stage = (tb.stages(rows) or ["before"])[-1]
-    kept = []
-    for row in rows:
-        if row.get("stage") in (stage, None):
-            numbers = {name: finite(row.get(name)) for name in ("x", "nominal", *_FIELDS)}
-            kept.append(numbers | {"side": row.get("side") or "left", "unit": row.get("unit")})
+def _alike(found: list[dict]) -> bool:
+    """Whether the right side's curve would lie on the left's: the same nominal, and edges within 5 % of the band."""
+    left, right = ([row for row in found if row["side"] == side] for side in ("left", "right"))
+    if not left or [row["x"] for row in left] != [row["x"] for row in right]:
+        return False
+    pairs = [(a[name], b[name]) for a, b in zip(left, right, strict=True) for name in ("nominal", "q05", "q95")]
+    known = [(a, b) for a, b in pairs if a is not None and b is not None]
+    band = max((row["q95"] - row["q05"] for row in left if row["q05"] is not None and row["q95"] is not None), default=0.0)
+    room = 0.05 * band or 1e-9
+    return len(known) == sum(a is not None or b is not None for a, b in pairs) and all(
+        abs(a - b) <= room for a, b in known)
+
+
+def curve_rows(tables: tb.Tables, axis: str, key: str) -> list[dict]:
+    """The numbers of one curve at the last stage, by side and x; what is undefined is None."""
+    found = [row for row in tables.get("curves", []) if row.get("axis") == axis and row.get("key") == key]
+    stage = (tb.stages(found) or [None])[-1]
+    kept = [{name: finite(row.get(name)) for name in ("x", "nominal", *_FIELDS)}
+            | {"side": row.get("side") or "left", "unit": row.get("unit")}
+            for row in found if row.get("stage") in (stage, None)]
     return sorted(kept, key=lambda row: (row["side"], row["x"]))
 
 
-def _layers(rows: list[dict], sides: list[str], title_x: str, title_y: str) -> alt.LayerChart:
-    order = [side for side in ("left", "right", "axle") if side in sides]
-    colours = {"left": theme.BLUE, "right": theme.ORANGE, "axle": theme.GREEN}
-    dashes = {"left": [1, 0], "right": [6, 3], "axle": [1, 0]}
-    several = len(order) > 1
-    colour = theme.label(alt.Color, "side", scale=alt.Scale(domain=order, range=[colours[s] for s in order]),
-                       legend=alt.Legend() if several else None)
-    dash = theme.label(alt.StrokeDash, "side", scale=alt.Scale(domain=order, range=[dashes[s] for s in order]),
-                          legend=alt.Legend() if several else None)
-    x = theme.amount(alt.X, "x", title=title_x, scale=alt.Scale(nice=False))
-    y_scale = alt.Scale(zero=False)
-    banded = [row for row in rows if row["q05"] is not None and row["q95"] is not None]
-    base = alt.Chart(theme.data(banded))
-    layers = [
-        base.mark_area(opacity=opacity, line=False).encode(
-            x=x, y=theme.amount(alt.Y, low, title=title_y, scale=y_scale), y2=theme.end(alt.Y2, high), color=colour)
-        for low, high, opacity in (("q05", "q95", 0.18), ("q25", "q75", 0.28)) if banded
+@cache
+def _template(several: bool) -> dict:
+    legend = alt.Legend(symbolType="stroke", symbolOpacity=1, symbolSize=300) if several else None
+    colour = label(alt.Color, "side", scale=alt.Scale(domain=slot("sides"), range=slot("colours")), legend=legend)
+    dash = label(alt.StrokeDash, "side", scale=alt.Scale(domain=slot("sides"), range=slot("dashes")), legend=legend)
+    x = amount(alt.X, "x", title=slot("x"), scale=alt.Scale(nice=False), axis=alt.Axis(tickCount=6))
+    scale = alt.Scale(zero=False)
+    bands = [
+        alt.Chart(rows("band")).mark_area(opacity=opacity).encode(
+            x=x, y=amount(alt.Y, low, title=None, scale=scale), y2=end(alt.Y2, high), color=colour)
+        for low, high, opacity in (("q05", "q95", 0.16), ("q25", "q75", 0.26))
     ]
-    line = alt.Chart(theme.data(rows)).mark_line(strokeWidth=2.2).encode(
-        x=x, y=theme.amount(alt.Y, "nominal", title=title_y, scale=y_scale), color=colour, strokeDash=dash)
-    return alt.layer(*layers, line)
+    bands += [alt.Chart(rows("edges")).mark_line(strokeWidth=1).encode(
+        x=x, y=amount(alt.Y, field, title=None, scale=scale), color=colour, strokeDash=dash) for field in ("q05", "q95")]
+    line = alt.Chart(rows("line")).mark_line(strokeWidth=2.2).encode(
+        x=x, y=amount(alt.Y, "nominal", title=None, scale=scale), color=colour, strokeDash=dash)
+    return template(*bands, line)
 
 
-def _description(rows: list[dict], key: str, words: str, unit: str | None) -> str:
-    known = [row for row in rows if row["nominal"] is not None]
+def _description(found: list[dict], key: str, words: str, unit: str | None) -> str:
+    known = [row for row in found if row["nominal"] is not None]
     if not known:
         return f"{key_name(key)} along {words}: not defined."
     first, last = known[0], known[-1]

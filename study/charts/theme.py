@@ -1,6 +1,4 @@
-"""The look of every chart: type, ink, categories that also differ in shape, and the dress put on at the end."""
-
-import altair as alt
+"""The look of every chart: type, ink, and categories that differ in shape as well as in colour."""
 
 INK, SOFT, FAINT, PAPER = "#1c2126", "#5b636b", "#d5d9dc", "#ffffff"
 BLUE, VERMILLION, GREEN, ORANGE = "#0072B2", "#D55E00", "#009E73", "#E69F00"
@@ -15,6 +13,7 @@ FAMILIES = {
     "rod or link": (ORANGE, "diamond", "diamond"),
     "rack": (PURPLE, "cross", "cross"),
 }
+HALO = {"stroke": PAPER, "strokeWidth": 4, "strokeJoin": "round", "strokeOpacity": 0.9}
 STAGE_WORDS = {"before": "before alignment", "after": "after alignment"}
 
 CONFIG = {
@@ -41,29 +40,3 @@ def family(part: str) -> str:
     if part in ("upright", "axle"):
         return "upright or axle"
     return "arm" if part == "arm" or part.endswith("_arm") else "rod or link"
-
-
-def data(rows: list[dict]) -> alt.Data:
-    """Rows for a chart. A tuple is passed on by reference where Altair copies a list at every step."""
-    return alt.Data(values=tuple(rows))
-
-
-def amount(channel: type, field: str, **options):
-    """A quantitative channel, spelled out: Altair's shorthand strings cost most of the time of a chart."""
-    return channel(field=field, type="quantitative", **options)
-
-
-def label(channel: type, field: str, **options):
-    """A nominal channel."""
-    return channel(field=field, type="nominal", **options)
-
-
-def end(channel: type, field: str):
-    """A second end (x2, y2): it takes its type from the first."""
-    return channel(field=field)
-
-
-def dress(chart, *, title: str, subtitle: str = "", description: str):
-    """Title, text alternative and the common look. `description` becomes the label read aloud."""
-    heading = alt.Title(title, subtitle=subtitle) if subtitle else alt.Title(title)
-    return chart.properties(title=heading, description=description).configure(**CONFIG)

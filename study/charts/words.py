@@ -90,9 +90,8 @@ def measure_name(row: Mapping) -> str:
     """A measure's name for people: its key, where the name starts with one, becomes words."""
     name = str(row.get("measure") or "")
     key = str(row.get("of") or name.split(" ")[0])
-    if not name.startswith(key) or "_" not in key:
-        return name
-    name = key_name(key) + name[len(key):]
+    if name.startswith(key) and "_" in key:
+        name = key_name(key) + name[len(key):]
     return name[:1].upper() + name[1:]
 
 
@@ -107,14 +106,20 @@ def key_name(key: str) -> str:
 def limits_text(row: Mapping) -> str:
     """`18 to 30 mm`, `at most 0.25°`, `at least 1 mm`, or an empty string without limits."""
     low, high = finite(row.get("limit_low")), finite(row.get("limit_high"))
-    unit = row.get("unit")
+    unit = unit_text(row.get("unit"))
+    tail = unit if unit == "°" or not unit else NBSP + unit
     if low is None and high is None:
         return ""
     if low is None:
-        return f"at most {quantity(high, unit)}"
+        return f"at most {given(high)}{tail}"
     if high is None:
-        return f"at least {quantity(low, unit)}"
-    return f"{number(low)} to {quantity(high, unit)}"
+        return f"at least {given(low)}{tail}"
+    return f"{given(low)} to {given(high)}{tail}"
+
+
+def given(value: float) -> str:
+    """A number as someone wrote it, without trailing zeros."""
+    return f"{value:g}".replace("-", MINUS)
 
 
 def effect_phrase(row: Mapping) -> str:

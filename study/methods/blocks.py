@@ -64,7 +64,7 @@ def into_blocks(values: np.ndarray, rows: int, *, unassembled: np.ndarray | None
     """Values (M, builds) in whole blocks of `rows` builds; `unassembled` (builds,) is found when None."""
     failed = unassembled_builds(values) if unassembled is None else np.asarray(unassembled, dtype=bool)
     missing = ~np.isfinite(values)
-    values = values.reshape(len(values), -1, rows)
+    values = values.reshape(len(values), values.shape[1] // rows, rows)
     assembled = max(int((~failed).sum()), 1)
     undefined = (missing & ~failed).sum(axis=1) / assembled
     failed = failed.reshape(-1, rows)

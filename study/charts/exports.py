@@ -27,12 +27,14 @@ def safe_stem(text: str) -> str:
 def export(chart, folder: Path, stem: str) -> list[Path]:
     """Write STEM.svg, .png, .pdf and .vl.json into `folder` (made when missing); returns the paths in that order.
 
+    `chart` is an Altair chart or a finished Vega-Lite specification.
+
     Raises ChartExportError when the folder cannot be written or the chart cannot be drawn.
     """
     import vl_convert
 
     folder, stem = Path(folder), safe_stem(stem)
-    spec = plain(chart.to_dict())
+    spec = plain(chart if isinstance(chart, dict) else chart.to_dict())
     try:
         svg = with_text_alternative(vl_convert.vegalite_to_svg(spec), spec)
         contents = {

@@ -1,0 +1,79 @@
+"""What stands behind the pivots in a view: wheels, ground, links, roll centre, scale bar, directions. Pixel rows."""
+
+from collections.abc import Mapping
+
+from study.charts import places, theme
+from study.charts.frame import Frame, sides
+from study.charts.words import number
+
+_FORWARD = {"front": "car's left →", "side": "← forward", "top": "↑ forward"}
+_LINK = "#777f86"
+
+
+def scenery(frame: Frame, geometry: places.Geometry, tables: Mapping) -> dict[str, list[dict]]:
+    """The data called tyres, rules, words_left, words_center and words_right."""
+    words = [*_scale_words(frame), *_roll_words(frame, geometry, tables)]
+    rules = [*_ground(frame, geometry), *_links(frame, geometry), *_roll_lines(frame, geometry, tables), *_scale_bar(frame)]
+    return {"tyres": _tyres(frame, geometry), "rules": rules} | {
+        f"words_{align}": [word for word in words if word["a"] == align] for align in ("left", "center", "right")}
+
+
+def _tyres(frame: Frame, geometry: places.Geometry) -> list[dict]:
+    outlines = []
+    for side in sides(geometry, frame.kind):
+        for x, y in places.hull([frame.px(point) for point in places.tyre(geometry["wheel"][side])]):
+            outlines.append({"g": side, "x": x, "y": y, "o": len(outlines)})
+    return outlines
+
+
+def _rule(a: tuple, b: tuple, *, colour: str = theme.SOFT, width: float = 1.0, dash: str = "solid") -> dict:
+    return {"x": a[0], "y": a[1], "x2": b[0], "y2": b[1], "c": colour, "w": width, "d": dash}
+
+
+def _ground(frame: Frame, geometry: places.Geometry) -> list[dict]:
+    if frame.kind == "top":
+        return []
+    centre, ground = frame.px((0.0, 0.0, geometry["ground_mm"]))
+    rules = [_rule((0, ground), (frame.width, ground), colour=theme.INK, width=1.6)]
+    if frame.kind == "front":
+        rules.append(_rule((centre, 8), (centre, ground), colour=theme.GREY, dash="dash"))
+    return rules
+
+
+def _links(frame: Frame, geometry: places.Geometry) -> list[dict]:
+    shown = sides(geometry, frame.kind) if places.two_sides(geometry) else ["left"]
+    return [_rule(frame.px(geometry[side][a]), frame.px(geometry[side][b]), colour=_LINK, width=2.4)
+            for side in shown for a, b, _ in geometry["lines"] if a in geometry[side] and b in geometry[side]]
+
+
+def _roll_lines(frame: Frame, geometry: places.Geometry, tables: Mapping) -> list[dict]:
+    """The roll centre as a cross, with the lines from both contact points to it."""
+    centre = places.roll_centre(geometry, tables) if frame.kind == "front" else None
+    if centre is None:
+        return []
+    x, y = frame.px((0.0, *centre))
+    lines = [_rule(frame.px(places.contact(geometry["wheel"][side])), (x, y), dash="dash") for side in ("left", "right")]
+    return [*lines, _rule((x - 9, y), (x + 9, y), colour=theme.INK, width=1.8),
+            _rule((x, y - 9), (x, y + 9), colour=theme.INK, width=1.8)]
+
+
+def _roll_words(frame: Frame, geometry: places.Geometry, tables: Mapping) -> list[dict]:
+    centre = places.roll_centre(geometry, tables) if frame.kind == "front" else None
+    if centre is None:
+        return []
+    x, y = frame.px((0.0, *centre))
+    ground = frame.px((0.0, 0.0, geometry["ground_mm"]))[1]
+    text = f"roll centre, {number(centre[1] - geometry['ground_mm'])} mm above ground"
+    return [{"x": x, "y": max(y, ground) + 16, "t": text, "a": "center"}]
+
+
+def _scale_bar(frame: Frame) -> list[dict]:
+    y, long = frame.height - 9, 100 * frame.px_per_mm
+    return [_rule((8, y), (8 + long, y), colour=theme.INK, width=2.0),
+            *(_rule((x, y - 4), (x, y + 4), colour=theme.INK) for x in (8, 8 + long))]
+
+
+def _scale_words(frame: Frame) -> list[dict]:
+    y = frame.height - 9
+    return [{"x": 14 + 100 * frame.px_per_mm, "y": y, "t": "100 mm", "a": "left"},
+            {"x": frame.width - 6, "y": y, "t": _FORWARD[frame.kind], "a": "right"}]

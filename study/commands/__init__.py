@@ -1,0 +1,57 @@
+"""The command line: one thin file per command. Nothing heavy is imported before a command runs."""
+
+import sys
+from importlib import import_module
+
+import typer
+
+from catalog.errors import HoldtightError
+
+COMMANDS = (
+    "run", "evaluate", "sweep", "measures", "add", "geometries", "show", "queue", "work", "studies", "cancel",
+    "critical", "sheet", "schema",
+)  # fmt: skip
+
+app = typer.Typer(
+    no_args_is_help=True,
+    add_completion=False,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    help="How closely each suspension pivot has to be made: builds a geometry thousands of times within tolerance, "
+    "aligns every build, ranks the pivots. Rigid geometry only: no strength, no compliance, no fatigue.",
+)
+for _name in COMMANDS:
+    app.command(_name)(import_module(f"study.commands.{_name}_command").run)
+
+
+def main() -> None:
+    """Entry point: exit code 0, 1 (the work failed) or 2 (wrong input); errors are a line or two, never a traceback."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="replace")
+    try:
+        app(standalone_mode=True)
+    except HoldtightError as error:
+        print(f"holdtight: {error}", file=sys.stderr)
+        sys.exit(error.exit_code)
+    except KeyboardInterrupt:
+        print("holdtight: stopped", file=sys.stderr)
+        sys.exit(1)
+    except MemoryError:
+        print("holdtight: out of memory; ask for fewer builds or close other programs", file=sys.stderr)
+        sys.exit(1)
+    except BrokenPipeError:
+        sys.stderr.close()
+        sys.exit(1)
+    except Exception as error:  # a fault of the program itself: one line, and the traceback where one can be sent from
+        print(f"holdtight: {_kept_traceback(error)}", file=sys.stderr)
+        sys.exit(1)
+
+
+def _kept_traceback(error: Exception) -> str:
+    import tempfile
+    import traceback
+
+    with tempfile.NamedTemporaryFile("w", prefix="holdtight-fault-", suffix=".txt", delete=False, encoding="utf-8") as file:
+        file.writelines(traceback.format_exception(error))
+    return f"this is a fault of the program ({type(error).__name__}: {error}); its details are in {file.name}"

@@ -1,0 +1,197 @@
+"""`critical`: which pivots matter."""
+
+from typing import Annotated
+
+import typer
+
+from catalog.errors import InputError
+from study.commands.common import CatalogOption, JsonOption, clean, number, print_json, print_table
+
+
+class StageError(InputError):
+    """A stage that the study does not have."""
+
+
+def run(
+    study: Annotated[int | None, typer.Argument(help="A study's number; without it, the critical pivots over the catalog.")] = None,
+    stage: Annotated[str | None, typer.Option(help="before or after alignment; else the last the study has.", show_default=False)] = None,
+    most: Annotated[int, typer.Option(help="Sources shown for each measure.", min=1)] = 6,
+    as_json: JsonOption = False,
+    catalog: CatalogOption = None,
+) -> None:
+    """Print the ranked sources of a study for each measure, or the critical pivots over the catalog."""
+    from catalog.store import Catalog
+
+    store = Catalog(catalog)
+    if study is None:
+        _over_catalog(store, as_json)
+        return
+    from study.dossier import load_dossier
+
+    dossier = load_dossier(store, study)
+    chosen = _stage(dossier, stage)
+    if as_json:
+        print_json(contract(dossier, chosen))
+    else:
+        print_ranking(dossier, stage=chosen, most=most)
+
+
+def _stage(dossier, given):
+    if given is None:
+        return dossier.stages[-1]
+    if given not in dossier.stages:
+        raise StageError(
+            f'--stage {given}: study {dossier.study["id"]} has {" and ".join(dossier.stages)}'
+            + ("" if len(dossier.stages) > 1 else " only: it has no [alignment]")
+        )
+    return given
+
+
+RANKING_KEYS = (
+    "source", "rank", "st", "st_low", "st_high", "s1", "s1_low", "s1_high", "linear_share", "mu_star", "mu_star_low",
+    "mu_star_high", "effect_axes", "effect_unit", "effect_per_mm", "tied", "verdict",
+)  # fmt: skip
+STATS_KEYS = (
+    "measure", "of", "side", "position", "unit", "nominal", "mean", "sd", "q025", "q975", "limit_low", "limit_high",
+    "good_share", "good_low", "good_high", "rss", "worst_low", "worst_high",
+)  # fmt: skip
+
+
+def contract(dossier, stage) -> dict:
+    """The ranking as plain JSON values."""
+    facts, last = dossier.study, dossier.stages[-1]
+    measures = []
+    for stats in dossier.of_stage("stats", stage):
+        ranking = [
+            {key: row[key] for key in RANKING_KEYS} | {"effect_xyz": row["effect"]}
+            for row in dossier.of_stage("ranking", stage, stats["measure_no"])
+        ]
+        measures.append({key: stats[key] for key in STATS_KEYS} | {"ranking": ranking})
+    out = {"study": facts["id"], "title": facts["title"], "geometry": facts["geometry"], "method": facts["method"]}
+    out |= {"stage": stage, "builds": facts["builds"], "unassembled": facts["unassembled"], "withheld": facts["withheld"]}
+    out |= {key: facts[key] if stage == last else None for key in ("good_share", "good_low", "good_high", "all_cars")}
+    out |= {"measures": measures}
+    return out | {key: dossier.tables[key] for key in ("demand", "failures", "worst", "correlations")}
+
+
+def print_ranking(dossier, *, stage=None, most=6) -> None:
+    """The ranking as tables, before beside after alignment."""
+    stage = stage or dossier.stages[-1]
+    facts = dossier.study
+    print(f"study {facts['id']}: {clean(facts['title'])}")
+    print(f"{clean(facts['geometry'])}, {facts['method']}, {facts['builds']} builds run, seed {facts['seed']}, sides {facts['sides']}")
+    for note in facts["notes"] or ():
+        print(f"note: {clean(note)}")
+    for stats in dossier.of_stage("stats", stage):
+        _print_measure(dossier, stage, stats, most)
+    _print_failures(dossier, stage)
+    _print_demand(dossier)
+    _print_good(facts)
+    print("≈ tied with the one above: the draws cannot tell the two apart. Effects are signed, on the drawing's own axes.")
+    print("Rigid geometry only. A wider tolerance never overrides a part's strength, edge distance or bearing limits.")
+
+
+def _print_measure(dossier, stage, stats, most):
+    rows = dossier.of_stage("ranking", stage, stats["measure_no"])
+    other = "before" if stage == "after" else "after"
+    share, heading = _share_of(rows)
+    elsewhere = {row["source"]: row for row in dossier.of_stage("ranking", other, stats["measure_no"])}
+    columns = [("", "right"), ("source", "left"), (heading, "right"), ("linear", "right")]
+    columns += [(f"{other}\nalignment", "right")] if elsewhere else []
+    columns += [("signed effect per mm (or degree)", "left")]
+    lines = []
+    for row in rows[:most]:
+        line = ["≈" if row["tied"] else str(row["rank"]), row["source"], share(row), _percent(row["linear_share"])]
+        line += [share(elsewhere[row["source"]], False) if row["source"] in elsewhere else "–"] if elsewhere else []
+        lines.append([*line, _effect(row)])
+    print_table(_heading(stats, stage), columns, lines, caption=_rest(rows[most:]))
+
+
+def _share_of(rows):
+    """(text of a row's figure, heading): the total index where there is one, the screening measure, the linear share."""
+    if any(row["st"] is not None for row in rows):
+        return lambda row, ends=True: _interval(row["st"], row["st_low"], row["st_high"], ends), "share ST\n(95 %)"
+    if any(row["mu_star"] is not None for row in rows):
+        return lambda row, ends=True: number(row["mu_star"]), "mu*"
+    return lambda row, ends=True: _percent(row["linear_share"]), "share"
+
+
+def _interval(value, low, high, ends):
+    if value is None:
+        return "–"
+    return f"{100 * value:.0f} % ({100 * low:.0f}–{100 * high:.0f})" if ends and low is not None else _percent(value)
+
+
+def _percent(value):
+    return "–" if value is None else f"{100 * value:.0f} %" if value >= 0.005 or value == 0 else "<1 %"
+
+
+def _effect(row):
+    if row["effect"] is None:
+        return "not a single slope"
+    names = {"length": "", "tilt_1": "tilt 1 ", "tilt_2": "tilt 2 "}
+    shown = [(axis, value) for axis, value in zip(row["effect_axes"], row["effect"], strict=True)]
+    largest = max(abs(value) for _, value in shown) or 1.0
+    parts = [f"{names.get(axis, axis + ' ')}{number(value, 3)}" for axis, value in shown if abs(value) > 0.05 * largest]
+    return f"{'  '.join(parts) or '0'}  {row['effect_unit']}"
+
+
+def _heading(stats, stage):
+    unit = stats["unit"]
+    text = f"\n{stats['measure']} [{unit}], {stats['position']}, {stage} alignment: drawing {number(stats['nominal'])}"
+    if stats["sd"] is not None:
+        text += f", builds {number(stats['mean'])} ± {number(stats['sd'], 2)} (1 sd)"
+    elif stats["rss"] is not None:
+        text += f", ± {number(stats['rss'], 2)} (1 sd, linear)"
+    if stats["limit_low"] is not None or stats["limit_high"] is not None:
+        text += f", limits {number(stats['limit_low'])} to {number(stats['limit_high'])}"
+    if stats["good_share"] is not None:
+        text += f", inside {100 * stats['good_share']:.1f} %"
+    return text
+
+
+def _rest(rows):
+    shares = [row["st"] if row["st"] is not None else row["linear_share"] for row in rows]
+    known = [s for s in shares if s is not None]
+    return f"{len(rows)} more sources, none above {100 * max(known):.0f} %" if known else None
+
+
+def _print_failures(dossier, stage):
+    rows = [row for row in dossier.tables["failures"] if row["stage"] == stage]
+    if rows:
+        columns = [("", "right"), ("source", "left"), ("index of failing", "right")]
+        print_table("\nwhat makes builds fail", columns, [[str(r["rank"]), r["source"], number(r["value"])] for r in rows])
+
+
+def _print_demand(dossier):
+    columns = [("sets", "left"), ("by", "left"), *((h, "right") for h in ("2.5 %", "median", "97.5 %", "least", "most", "ran out"))]
+    rows = [
+        [r["adjuster"], r["by"], *(f"{r[k]:+.2f}" for k in ("q025", "q50", "q975", "low", "high")), _percent(r["ran_out_share"])]
+        for r in dossier.tables["demand"]
+    ]
+    if rows:
+        print_table("\nadjuster demand, mm from the drawing (the shim kit)", columns, rows)
+
+
+def _print_good(facts):
+    if facts.get("good_share") is not None:
+        text = f"{100 * facts['good_share']:.1f} % of builds are inside all limits (95 %: {100 * facts['good_low']:.1f}–{100 * facts['good_high']:.1f})"
+        if facts.get("all_cars") is not None:
+            text += f"; chance that all cars asked for are: {100 * facts['all_cars']:.1f} %"
+        print(text)
+
+
+def _over_catalog(store, as_json):
+    from catalog import results
+
+    with store.read() as con:
+        found = results.critical(con)
+    if as_json:
+        print_json(found)
+        return
+    columns = [("geometry", "left"), ("study", "right"), ("measure", "left"), ("", "right"), ("source", "left"), ("share", "right")]
+    rows = [
+        [f"{r['geometry']}@{r['revision']}", str(r["study"]), r["measure"], str(r["rank"]), r["source"], _percent(r["st"] if r["st"] is not None else r["linear_share"])]
+        for r in found
+    ]  # fmt: skip
+    print_table("critical pivots: the newest finished study of each revision", columns, rows)

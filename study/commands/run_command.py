@@ -1,0 +1,42 @@
+"""`run`: the main job in one go."""
+
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from study.commands.common import CatalogOption, JsonOption, by_whom, clean, default_threads, print_json
+
+
+def run(
+    study: Annotated[Path, typer.Argument(help="A study file.")],
+    threads: Annotated[int, typer.Option(help="Threads; 0 takes one a core.", min=0, max=256)] = 0,
+    sheet: Annotated[Path | None, typer.Option(help="The sheet's file; else sheets/study-N.html.", show_default=False)] = None,
+    by: Annotated[str | None, typer.Option(help="Who asks; else the login name.", show_default=False)] = None,
+    as_json: JsonOption = False,
+    catalog: CatalogOption = None,
+) -> None:
+    """Add the geometry, queue and work the study, print the ranking, write the sheet."""
+    from catalog.store import Catalog
+    from study.commands.critical_command import print_ranking
+    from study.commands.work_command import progress_watch, stop_on_signals
+    from study.runner import enqueue, work
+    from study.study_file import read_study
+
+    store, asked = Catalog(catalog), read_study(study)
+    number = enqueue(store, asked, study.parent, by=by_whom(by))
+    with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
+        finished = work(store, threads=threads or default_threads(), watch=watch, study_id=number)
+    if number not in finished:
+        print(f"study {number} was stopped; what is finished is kept, `holdtight work` goes on with it")
+        raise typer.Exit(1)
+    from study.dossier import load_dossier
+    from study.sheet import write_sheet
+
+    dossier = load_dossier(store, number)
+    path = write_sheet(dossier, sheet or Path("sheets") / f"study-{number}.html")
+    if as_json:
+        print_json({"study": number, "geometry": dossier.study["geometry"], "builds": dossier.study["builds"], "sheet": str(path)})
+        return
+    print_ranking(dossier)
+    print(f"sheet: {clean(path)}   (`holdtight sheet {number} --charts` writes its charts as SVG, PNG, PDF and Vega-Lite JSON)")

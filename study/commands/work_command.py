@@ -1,0 +1,68 @@
+"""`work`: run what is queued."""
+
+import contextlib
+import signal
+from typing import Annotated
+
+import typer
+
+from study.commands.common import CatalogOption, JsonOption, clean, default_threads, print_json
+
+
+def run(
+    threads: Annotated[int, typer.Option(help="Threads; 0 takes one a core.", min=0, max=256)] = 0,
+    as_json: JsonOption = False,
+    catalog: CatalogOption = None,
+) -> None:
+    """Run the queued studies, one after the other, until none is left. Ctrl-C stops after the tasks in hand."""
+    from catalog.store import Catalog
+    from study.runner import work
+
+    with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
+        finished = work(Catalog(catalog), threads=threads or default_threads(), watch=watch)
+    if watch.stop.is_set():
+        print("stopped; what is finished is kept, `holdtight work` goes on with it")
+        raise typer.Exit(1)
+    if as_json:
+        print_json({"finished": finished})
+    else:
+        print(f"finished: {', '.join(map(str, finished)) or 'nothing was queued'}")
+
+
+@contextlib.contextmanager
+def progress_watch(*, quiet=False):
+    """A Watch that draws a bar with the time left, where there is a terminal."""
+    from rich.console import Console
+    from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
+
+    from study.runner import Watch
+
+    columns = (TextColumn("study {task.description}"), BarColumn(), TextColumn("{task.completed}/{task.total} builds"))
+    bar = Progress(*columns, TimeRemainingColumn(), console=Console(stderr=True), disable=quiet, transient=True)
+    rows = {}
+
+    def progress(job, done, total):
+        if job.id not in rows:
+            rows[job.id] = bar.add_task(f"{job.id} {clean(job.title)[:40]}".replace("[", "("), total=total)
+        bar.update(rows[job.id], completed=done)
+
+    with bar:
+        yield Watch(progress=progress)
+
+
+@contextlib.contextmanager
+def stop_on_signals(watch):
+    """Ctrl-C and a request to terminate set the watch's stop; a second one ends at once."""
+
+    def stop(number, frame):
+        if watch.stop.is_set():
+            raise KeyboardInterrupt
+        watch.stop.set()
+
+    signals = [s for s in (signal.SIGINT, getattr(signal, "SIGTERM", None)) if s is not None]
+    before = {s: signal.signal(s, stop) for s in signals}
+    try:
+        yield
+    finally:
+        for number, handler in before.items():
+            signal.signal(number, handler)

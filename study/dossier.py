@@ -1,0 +1,49 @@
+"""All that is known of a finished study, as plain data: what rankings are printed from and sheets are written from."""
+
+from dataclasses import dataclass
+
+from catalog import queue, results, revisions
+from catalog.errors import InputError
+from catalog.store import Catalog
+from study.study_file import Study, parse_study
+from study.tasks import StudyWork
+
+
+class NotFinished(InputError):
+    """A study that has no results (yet)."""
+
+
+@dataclass(frozen=True)
+class Dossier:
+    """study: facts (dict); asked: the Study; geometry: the record; tables: result tables; work: the study's sources."""
+
+    study: dict
+    asked: Study
+    geometry: object
+    tables: dict[str, list[dict]]
+    work: StudyWork
+
+    @property
+    def stages(self) -> tuple[str, ...]:
+        return self.work.stages
+
+    def of_stage(self, table: str, stage: str, measure_no: int | None = None) -> list[dict]:
+        """Rows of a table at one stage, of one measure or of all."""
+        return [
+            row for row in self.tables[table]
+            if row["stage"] == stage and (measure_no is None or row["measure_no"] == measure_no)
+        ]  # fmt: skip
+
+
+def load_dossier(catalog: Catalog, number: int) -> Dossier:
+    """The dossier of a finished study. Raises StudyNotFound, NotFinished."""
+    with catalog.read() as con:
+        job = queue.get(con, number)
+        if job.state != "done":
+            why = f": {job.error}" if job.error else ""
+            raise NotFinished(f"study {number} is {job.state}{why}; `holdtight work` runs what is queued")
+        tables = results.load_results(con, number)
+        geometry = revisions.load(con, revisions.by_id(con, job.revision_id))
+    asked = parse_study(job.text, source=f"study {number}")
+    facts = tables.pop("study")[0] | {"created": job.created, "by": job.by, "finished": job.finished}
+    return Dossier(facts, asked, geometry, tables, StudyWork(geometry, asked))

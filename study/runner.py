@@ -1,0 +1,213 @@
+"""Runs queued studies: claims one, does its tasks on threads, keeps each finished one, ends with the result tables.
+
+The catalog is held only for the moment of a claim, a chunk or a result. Every task is a pure function of the study and
+its geometry, so a study that was interrupted goes on with the tasks that are not kept yet and ends with the same bits.
+"""
+
+import threading
+import time
+from collections.abc import Callable
+from concurrent.futures import FIRST_COMPLETED, Future, ThreadPoolExecutor, wait
+from dataclasses import dataclass, field
+from importlib.metadata import PackageNotFoundError, version
+from pathlib import Path
+
+import numpy as np
+
+from catalog import queue, revisions
+from catalog.chunks import load_chunk, store_chunk
+from catalog.errors import HoldtightError, WorkError
+from catalog.store import Catalog
+from study.study_file import Study, parse_study
+from study.tabulate import tables
+from study.tasks import Outcome, StudyWork
+
+HEARTBEAT_S = 10.0
+
+
+class StudyFailed(WorkError):
+    """A study ended with an error of its own."""
+
+
+class Stopped(WorkError):
+    """The worker was asked to stop; what is finished is kept."""
+
+
+def program_version() -> str:
+    try:
+        return version("holdtight")
+    except PackageNotFoundError:
+        return "unknown"
+
+
+def register(catalog: Catalog, geometry, *, by: str, why: str) -> revisions.Revision:
+    """Judge a geometry's mobility, evaluate it and keep it as a revision (the same content is the same revision)."""
+    from study.nominal import evaluate
+
+    found = evaluate(geometry)
+    with catalog.write() as con:
+        return revisions.register(con, geometry, measures=found, by=by, why=why)
+
+
+def geometry_of(catalog: Catalog, study: Study, folder: Path, *, by: str):
+    """The revision and the geometry that a study names: a file beside it, or NAME@REVISION of the catalog."""
+    if "@" in study.geometry or not study.geometry.endswith(".toml"):
+        with catalog.read() as con:
+            revision = revisions.find(con, study.geometry)
+            return revision, revisions.load(con, revision)
+    from catalog.geometry_file import read_geometry
+
+    geometry = read_geometry(folder / study.geometry)
+    return register(catalog, geometry, by=by, why="named by a study"), geometry
+
+
+def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
+    """Check a study against its geometry and queue it. Gives its number."""
+    revision, geometry = geometry_of(catalog, study, folder, by=by)
+    StudyWork(geometry, study)
+    with catalog.write() as con:
+        return queue.enqueue(
+            con, text=study.text, title=study.title, method=study.method, size=study.size, seed=study.seed,
+            sides=study.sides, revision_id=revision.id, version=program_version(), by=by,
+        )  # fmt: skip
+
+
+@dataclass
+class Watch:
+    """What a worker tells and listens to: called with (job, done builds, total builds); `stop` ends it between tasks."""
+
+    progress: Callable = lambda job, done, total: None
+    stop: threading.Event = field(default_factory=threading.Event)
+
+
+def work(catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None = None) -> list[int]:
+    """Run queued studies (or just one) until none is left. Gives the numbers of those that were finished.
+
+    A study that fails is marked so and the next one is taken; with `study_id` its error is raised.
+    """
+    worker, finished = queue.worker_name(), []
+    while not watch.stop.is_set():
+        with catalog.write() as con:
+            job = queue.claim(con, worker, study_id=study_id)
+        if job is None:
+            break
+        try:
+            if _Run(catalog, job, worker, threads=threads, watch=watch).run():
+                finished.append(job.id)
+        except Stopped:
+            break
+        except HoldtightError as error:
+            with catalog.write() as con:
+                queue.fail(con, job.id, worker, error=str(error))
+            if study_id is not None:
+                raise
+        except Exception as error:
+            with catalog.write() as con:
+                queue.fail(con, job.id, worker, error=f"fault of the program: {type(error).__name__}: {error}")
+            raise
+        if study_id is not None:
+            break
+    return finished
+
+
+class _Run:
+    """One study, from its claim to its results."""
+
+    def __init__(self, catalog, job, worker, *, threads, watch):
+        self.catalog, self.job, self.worker, self.threads, self.watch = catalog, job, worker, threads, watch
+        self.started = time.monotonic()
+        self.last_sign = self.started
+
+    def run(self) -> bool:
+        """Do what is not kept yet and finish; False when the study was cancelled or taken over."""
+        with self.catalog.read() as con:
+            geometry = revisions.load(con, revisions.by_id(con, self.job.revision_id))
+        self.study = parse_study(self.job.text, source=f"study {self.job.id}")
+        self.work = StudyWork(geometry, self.study)
+        self.total = sum(self.work.builds(task) for task in self.work.tasks)
+        outcomes = self._kept()
+        self.done = sum(len(o.status) for o in outcomes.values())
+        if not self._alive() or not self._do([t for t in self.work.tasks if t.number not in outcomes], outcomes):
+            return False
+        return self._finish(outcomes)
+
+    def _kept(self):
+        outcomes = {}
+        with self.catalog.read() as con:
+            query = "SELECT stage, chunk_no FROM kept.chunks WHERE study_id = ?"
+            for stage, number in con.execute(query, [self.job.id]).fetchall():
+                arrays, status = load_chunk(con, self.job.id, stage=stage, chunk_no=number)
+                outcomes[number] = _from_arrays(self.work.tasks[number], arrays, status)
+        return outcomes
+
+    def _do(self, tasks, outcomes):
+        """Tasks on threads, at most two a thread in flight; the main thread keeps what comes back, in any order."""
+        from threadpoolctl import threadpool_limits
+
+        waiting, running = list(reversed(tasks)), {}
+        with threadpool_limits(1), ThreadPoolExecutor(self.threads) as pool:
+            try:
+                while waiting or running:
+                    while waiting and len(running) < 2 * self.threads:
+                        task = waiting.pop()
+                        running[pool.submit(self._timed, task)] = task
+                    ready, _ = wait(running, timeout=0.2, return_when=FIRST_COMPLETED)
+                    if not self._keep_all(ready, running, outcomes):
+                        return False
+            finally:
+                pool.shutdown(wait=False, cancel_futures=True)
+        return True
+
+    def _timed(self, task):
+        start = time.monotonic()
+        return self.work.run(task), time.monotonic() - start
+
+    def _keep_all(self, ready: set[Future], running, outcomes) -> bool:
+        if self.watch.stop.is_set():
+            with self.catalog.write() as con:
+                queue.release(con, self.job.id, self.worker)
+            raise Stopped(f"study {self.job.id}: stopped; what is finished is kept, `holdtight work` goes on with it")
+        for future in ready:
+            task = running.pop(future)
+            outcome, seconds = future.result()
+            if not self._keep(task, outcome, seconds):
+                return False
+            outcomes[task.number] = outcome
+            self.done += len(outcome.status)
+            self.watch.progress(self.job, self.done, self.total)
+        return self._alive() if time.monotonic() - self.last_sign > HEARTBEAT_S else True
+
+    def _keep(self, task, outcome, seconds):
+        self.last_sign = time.monotonic()
+        values, more = _to_arrays(task, outcome, len(self.study.measures))
+        with self.catalog.write() as con:
+            return store_chunk(
+                con, self.job.id, self.worker, stage=task.stage, chunk_no=task.number, first_build=self.work.first_build(task),
+                values=values, status=outcome.status, seconds=seconds, more=more,
+            )  # fmt: skip
+
+    def _alive(self):
+        self.last_sign = time.monotonic()
+        with self.catalog.write() as con:
+            return queue.heartbeat(con, self.job.id, self.worker, total=self.total)
+
+    def _finish(self, outcomes):
+        found, facts = tables(self.work, outcomes)
+        facts["seconds"] = time.monotonic() - self.started
+        facts["stages"] = list(self.work.stages)
+        with self.catalog.write() as con:
+            return queue.finish(con, self.job.id, self.worker, tables={"study": [facts], **found})
+
+
+def _to_arrays(task, outcome, measures):
+    """(values of the measures, further arrays by name) as the catalog keeps a chunk."""
+    if task.kind != "draws":
+        return np.empty((0, len(outcome.status))), {task.kind: outcome.values}
+    return outcome.values[:measures], {"alignment": outcome.values[measures:]}
+
+
+def _from_arrays(task, arrays, status):
+    if task.kind != "draws":
+        return Outcome(arrays[task.kind], status)
+    alignment = arrays.get("alignment", np.empty((0, len(status))))
+    return Outcome(np.concatenate((arrays.get("value", np.empty((0, len(status)))), alignment)), status)
