@@ -85,9 +85,10 @@ def load_status(con: "DuckDBPyConnection", study_id: int, *, stage: str) -> "np.
     return con.execute(query, [study_id, stage]).fetchnumpy()["status"]
 
 
-def critical(con: "DuckDBPyConnection") -> list[dict[str, Any]]:
-    """The critical_pivots view: the three strongest sources a measure, of the newest study a revision."""
-    return fetch_rows(con, "SELECT * FROM critical_pivots ORDER BY geometry, revision, measure_no, rank")
+def critical(con: "DuckDBPyConnection", *, best: int = 3) -> list[dict[str, Any]]:
+    """Rows of critical_pivots: the best (1 to 3) sources a measure, of the newest study a revision."""
+    query = "SELECT * FROM critical_pivots WHERE rank <= ? ORDER BY geometry, revision, measure_no, rank"
+    return fetch_rows(con, query, [best])
 
 
 def final_stage(tables: Tables) -> str | None:

@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 
 DEFAULT_NAME = "holdtight.duckdb"
 WAIT_S = 20.0
+DAMAGE = ("Could not read enough bytes", "Corrupt database", "checksum")
 _turns: dict[Path, threading.Lock] = {}
 _turns_guard = threading.Lock()
 
@@ -109,6 +110,10 @@ class Catalog:
         try:
             yield con
         except duckdb.Error as problem:
+            if any(sign in str(problem) for sign in DAMAGE):
+                raise CatalogForeign(
+                    f"{self.path}: is damaged ({_first_line(problem)}); restore a copy."
+                ) from problem
             raise CatalogFailed(f"{self.path}: the catalog refused this: {_first_line(problem)}") from problem
         finally:
             con.close()
@@ -136,9 +141,7 @@ class Catalog:
     def _checked_version(self, con: "DuckDBPyConnection") -> int:
         found, newest = migrate.schema_version(con), migrate.newest_version()
         if found is None:
-            raise CatalogForeign(
-                f"{self.path}: is a DuckDB file but no catalog of ours; name another."
-            )
+            raise CatalogForeign(f"{self.path}: is a DuckDB file but no catalog of ours; name another.")
         if found > newest:
             raise CatalogTooNew(
                 f"{self.path}: has catalog schema version {found}, this program knows up to {newest};"
@@ -170,9 +173,7 @@ class Catalog:
             raise CatalogForeign(f"{path}: is a folder; name a file, for instance {path / DEFAULT_NAME}.")
         if not path.exists():
             if read_only:
-                raise CatalogMissing(
-                    f"{path}: there is no catalog; `holdtight add` makes one."
-                )
+                raise CatalogMissing(f"{path}: there is no catalog; `holdtight add` makes one.")
             if not path.parent.is_dir():
                 raise CatalogMissing(f"{path}: the folder {path.parent} does not exist; make it first.")
             if not os.access(path.parent, os.W_OK):
@@ -181,9 +182,7 @@ class Catalog:
                 )
             migrate.create(path)
         elif not read_only and not (os.access(path, os.W_OK) and os.access(path.parent, os.W_OK)):
-            raise CatalogNotWritable(
-                f"{path}: file or folder is read-only; allow writing or use a copy."
-            )
+            raise CatalogNotWritable(f"{path}: file or folder is read-only; allow writing or use a copy.")
 
     def _raise_unless_busy(self, problem: Exception, *, read_only: bool, late: bool) -> None:
         text = str(problem)

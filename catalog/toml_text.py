@@ -15,6 +15,16 @@ MAX_BYTES = 1_000_000
 MAX_DEPTH = 12
 MAX_KEY_PARTS = 200
 SHOWN_PROBLEMS = 3
+WANTED_TYPES = {
+    "float_type": "a number",
+    "int_type": "a whole number",
+    "string_type": "text in quotes",
+    "bool_type": "true or false",
+    "list_type": "a list in brackets",
+    "dict_type": "a table",
+    "model_type": "a table",
+    "model_attributes_type": "a table",
+}
 Model = TypeVar("Model", bound=BaseModel)
 
 
@@ -147,6 +157,8 @@ def _line(problem: dict, model: type[BaseModel]) -> str:
         return f"{given} must be one of {problem['ctx']['expected']}."
     if kind in ("too_short", "too_long"):
         return f"{given} must be three numbers [x, y, z]; {problem['ctx']['actual_length']} are given."
+    if kind in WANTED_TYPES:
+        return f"{given} must be {WANTED_TYPES[kind]}; correct it."
     return f"{given}: {problem['msg'][0].lower()}{problem['msg'][1:]}; correct it."
 
 

@@ -36,7 +36,9 @@ class Bench:
     def extra(self, settings):
         """Feature errors (feature, (k, N)) of settings (A, N) mm."""
         return [
-            (feature, direction[:, None] * settings[i]) for i, moves in enumerate(self.moves) for feature, direction in moves
+            (feature, direction[:, None] * settings[i])
+            for i, moves in enumerate(self.moves)
+            for feature, direction in moves
         ]
 
 
@@ -56,6 +58,18 @@ def bench_of(corner: Corner, study) -> Bench:
         tuple(tuple(known[a.by]) for a in chosen),
         np.array([a.step_mm or 0.0 for a in chosen]),
         np.array([np.inf if a.range_mm is None else a.range_mm for a in chosen]),
+    )
+
+
+def judge_gains(bench: Bench, gains) -> None:
+    """Raise AlignmentError where the gains (A, A), degrees per mm, do not set the angles apart."""
+    values = np.linalg.svd(gains, compute_uv=False) if np.isfinite(gains).all() else np.zeros(1)
+    if values[-1] > 1e-3 * values[0] and values[0] > 1e-4:
+        return
+    pairs = ", ".join(f"{t} by {b}" for t, b in zip(bench.targets, bench.by, strict=True))
+    raise AlignmentError(
+        f"alignment: these adjusters do not set these angles apart ({pairs}; gains {np.round(gains, 4).tolist()} degrees "
+        "per mm); name other adjusters"
     )
 
 
@@ -168,6 +182,8 @@ class _State:
         length = (step * step).sum(axis=0)
         error = miss - self.miss - np.einsum("abn,bn->an", self.matrix, step)
         with np.errstate(all="ignore"):
-            update = np.where((length > 0) & np.isfinite(error).all(axis=0), error / np.where(length > 0, length, 1.0), 0.0)
+            update = np.where(
+                (length > 0) & np.isfinite(error).all(axis=0), error / np.where(length > 0, length, 1.0), 0.0
+            )
         self.matrix = self.matrix + update[:, None] * step[None]
         self.settings, self.miss = settings, miss

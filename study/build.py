@@ -101,7 +101,11 @@ def build_model(corners: dict[str, Corner], study) -> BuildModel:
         maker.add_band(adjuster)
     perfect = tuple(f.name for f in features if f.name not in wanted)
     return BuildModel(
-        tuple(maker.sources), {hand: tuple(found) for hand, found in maker.effects.items()}, maker.bands, maker.count, perfect
+        tuple(maker.sources),
+        {hand: tuple(found) for hand, found in maker.effects.items()},
+        maker.bands,
+        maker.count,
+        perfect,
     )
 
 
@@ -165,5 +169,6 @@ def built_features(corner: Corner, effects, errors: np.ndarray, extra=()) -> dic
     for name, error in extra:
         moved[name] = moved[name] + error if name in moved else error
     return {
-        name: feature.built(moved.get(name, np.zeros((len(feature.axes), 1)))) for name, feature in corner.features.items()
+        name: feature.built(moved.get(name, np.zeros((len(feature.axes), 1))))
+        for name, feature in corner.features.items()
     }

@@ -5,8 +5,10 @@ from dataclasses import dataclass
 from catalog import queue, results, revisions
 from catalog.errors import InputError
 from catalog.store import Catalog
+from study.assembly import corner_of
+from study.build import BuildModel, build_model
 from study.study_file import Study, parse_study
-from study.tasks import StudyWork
+from study.tasks import stages_of
 
 
 class NotFinished(InputError):
@@ -15,17 +17,17 @@ class NotFinished(InputError):
 
 @dataclass(frozen=True)
 class Dossier:
-    """study: facts (dict); asked: the Study; geometry: the record; tables: result tables; work: the study's sources."""
+    """study: facts (dict); asked: the Study; geometry: the record; tables: result tables; model: its sources."""
 
     study: dict
     asked: Study
     geometry: object
     tables: dict[str, list[dict]]
-    work: StudyWork
+    model: BuildModel
 
     @property
     def stages(self) -> tuple[str, ...]:
-        return self.work.stages
+        return stages_of(self.asked)
 
     def of_stage(self, table: str, stage: str, measure_no: int | None = None) -> list[dict]:
         """Rows of a table at one stage, of one measure or of all."""
@@ -46,4 +48,6 @@ def load_dossier(catalog: Catalog, number: int) -> Dossier:
         geometry = revisions.load(con, revisions.by_id(con, job.revision_id))
     asked = parse_study(job.text, source=f"study {number}")
     facts = tables.pop("study")[0] | {"created": job.created, "by": job.by, "finished": job.finished}
-    return Dossier(facts, asked, geometry, tables, StudyWork(geometry, asked))
+    hands = ("left",) if geometry.linkage == "solid-axle" else ("left", "right")
+    model = build_model({hand: corner_of(geometry, hand) for hand in hands}, asked)
+    return Dossier(facts, asked, geometry, tables, model)

@@ -97,7 +97,9 @@ class Hand:
         nominal = self.block(np.zeros((self.scalars, 1)), np.zeros((len(self.bench.by), 1)))
         rows, road = self._rows_and_road(nominal, spot)
         start = self._start_of(spot)
-        rotation, t, worst = kernel.solve_carefully(rows.turned(start.rotation), road, rest=start.rest, count=1)
+        rotation, t, worst = kernel.solve_carefully(
+            rows.turned(start.rotation), road, rest=start.rest, count=1, least_steps=1
+        )
         self._judge(spot, worst[0])
         rotation = rotation[:, :, 0] @ start.rotation
         jacobian = np.empty((6, 6, 1))

@@ -129,9 +129,7 @@ def _size(entry: StudyEntry) -> int:
         raise StudyFileError(f'size = {size} must be {low} to {high} with method = "{entry.method}"')
     if entry.method == "sobol" and size & (size - 1):
         below = 1 << (size.bit_length() - 1)
-        raise StudyFileError(
-            f'size = {size} must be a power of two with method = "sobol"; take {below} or {2 * below}'
-        )
+        raise StudyFileError(f'size = {size} must be a power of two with method = "sobol"; take {below} or {2 * below}')
     return size
 
 

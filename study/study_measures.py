@@ -90,9 +90,7 @@ def _limits(given: list[float] | None) -> tuple[float, float] | None:
         return None
     low, high = given
     if not low < high or (math.isinf(low) and math.isinf(high)):
-        raise MeasureError(
-            f"limits = {given} must be low, high with low below high and at least one of them finite"
-        )
+        raise MeasureError(f"limits = {given} must be low, high with low below high and at least one of them finite")
     return float(low), float(high)
 
 

@@ -12,7 +12,17 @@ from study.tasks import CURVE_POSITIONS, StudyWork
 from study.zone_field import ZoneField
 from study.zones import Zone
 
-QUANTILES = {"q005": 0.005, "q025": 0.025, "q05": 0.05, "q25": 0.25, "q50": 0.5, "q75": 0.75, "q95": 0.95, "q975": 0.975, "q995": 0.995}
+QUANTILES = {
+    "q005": 0.005,
+    "q025": 0.025,
+    "q05": 0.05,
+    "q25": 0.25,
+    "q50": 0.5,
+    "q75": 0.75,
+    "q95": 0.95,
+    "q975": 0.975,
+    "q995": 0.995,
+}
 CURVE_QUANTILES = {k: QUANTILES[k] for k in ("q05", "q25", "q50", "q75", "q95")}
 BINS = 40
 LINEAR_DRAWS = 4096
@@ -89,7 +99,12 @@ class _Stage:
         x = np.array(measure.sweep)
         part = np.nan_to_num(effects[rows])
         self.shares[i] = linear.taken_shares(
-            self.nominal_positions[rows], part, field, problem, lambda v: TAKES[measure.take](x, v), seed=self.study.seed
+            self.nominal_positions[rows],
+            part,
+            field,
+            problem,
+            lambda v: TAKES[measure.take](x, v),
+            seed=self.study.seed,
         )
         self.rss[i] = np.nan
 
@@ -98,7 +113,7 @@ class _Stage:
         field, effects, group = self.model.field, self.effects, self.model.problem.group_of
         extra_zones, columns, groups = [], [], []
         hands = self.work.stepless(self.stage) if self.stage == "after" else None
-        for name, hand in (hands.hands.items() if hands else ()):
+        for name, hand in hands.hands.items() if hands else ():
             if not hand.bench.by:
                 continue
             apart = 1.0 / np.diag(np.linalg.inv(hands.starts[name][1]))
@@ -111,16 +126,18 @@ class _Stage:
         if not extra_zones:
             return field, effects, self.model.problem
         problem = Problem(np.concatenate((group, groups)), len(self.model.sources), self.model.problem.names)
-        return ZoneField(field.zones + tuple(extra_zones)), np.concatenate((effects, effects[:, columns]), axis=1), problem
+        return (
+            ZoneField(field.zones + tuple(extra_zones)),
+            np.concatenate((effects, effects[:, columns]), axis=1),
+            problem,
+        )
 
     # --- sampled methods
 
     def _analysed(self):
         m = len(self.measures)
         bad = self.status > 0
-        result = self.work.method.analyse(
-            self.model.problem, self.drawn[:m], seed=self.study.seed, unassembled=bad
-        )
+        result = self.work.method.analyse(self.model.problem, self.drawn[:m], seed=self.study.seed, unassembled=bad)
         self.facts["unassembled"] += int(bad.sum())
         self.facts["dropped_blocks"] = max(self.facts["dropped_blocks"], int(getattr(result, "dropped_blocks", 0) or 0))
         if getattr(result, "withheld", False):
@@ -176,7 +193,11 @@ class _Stage:
         for key in ("st", "s1"):
             for end in ("", "_low", "_high"):
                 row[key + end] = self._index(i, g, key + end) if self.method == "sobol" else None
-        for name, attribute in (("mu_star", "source_mu_star"), ("mu_star_low", "source_low"), ("mu_star_high", "source_high")):
+        for name, attribute in (
+            ("mu_star", "source_mu_star"),
+            ("mu_star_low", "source_low"),
+            ("mu_star_high", "source_high"),
+        ):
             row[name] = self._index(i, g, attribute) if self.method == "morris" else None
         return row | self._effect(i, measure, source)
 
@@ -192,7 +213,12 @@ class _Stage:
             axes = [f"left {a}" for a in axes] + [f"right {a}" for a in axes]
         effect = None if self._is_nonlinear(measure) else [float(e) for e in self.signed[i, columns]]
         size = None if effect is None else math.sqrt(sum(e * e for e in effect))
-        return {"effect": effect, "effect_axes": axes, "effect_unit": f"{_unit(measure)} per {source.unit}", "effect_per_mm": size}
+        return {
+            "effect": effect,
+            "effect_axes": axes,
+            "effect_unit": f"{_unit(measure)} per {source.unit}",
+            "effect_per_mm": size,
+        }
 
     def _stats(self):
         m = len(self.measures)
@@ -213,7 +239,11 @@ class _Stage:
                 row |= {"builds": int(values.shape[1]), "unassembled": int(bad[0].sum())}
                 self._histogram(i, values[i])
             if good is not None and measure.limits:
-                row |= {"good_share": float(good.measure_share[i]), "good_low": float(good.measure_low[i]), "good_high": float(good.measure_high[i])}
+                row |= {
+                    "good_share": float(good.measure_share[i]),
+                    "good_low": float(good.measure_low[i]),
+                    "good_high": float(good.measure_high[i]),
+                }
             self.out["stats"].append(row)
         if summary is not None and self.method == "spread":
             self._correlations(summary)
@@ -235,7 +265,9 @@ class _Stage:
         drawn = linear.draws(
             self.nominal_positions, np.nan_to_num(effects), field, seed=self.study.seed, count=LINEAR_DRAWS
         )
-        return np.stack([taken(m, drawn[rows]) for m, rows in zip(self.measures, self.work.position_slices, strict=True)])
+        return np.stack(
+            [taken(m, drawn[rows]) for m, rows in zip(self.measures, self.work.position_slices, strict=True)]
+        )
 
     def _facts_of(self, good, bad):
         if self.stage == self.work.stages[-1]:
@@ -247,11 +279,17 @@ class _Stage:
                 self.facts["all_cars"] = spread.all_cars(good.share, self.study.cars)
 
     def _stats_row(self, i, measure):
-        none = dict.fromkeys(("mean", "sd", "low", "high", *QUANTILES, "good_share", "good_low", "good_high", "builds", "unassembled"))
+        none = dict.fromkeys(
+            ("mean", "sd", "low", "high", *QUANTILES, "good_share", "good_low", "good_high", "builds", "unassembled")
+        )
         low, high = measure.limits or (-math.inf, math.inf)
         nominal = taken(measure, self.nominal_positions[self.work.position_slices[i]][:, None])[0]
         linear_only = not self._is_nonlinear(measure)
-        worst = [float(nominal + self.stack.worst_low[i]), float(nominal + self.stack.worst_high[i])] if linear_only else None
+        worst = (
+            [float(nominal + self.stack.worst_low[i]), float(nominal + self.stack.worst_high[i])]
+            if linear_only
+            else None
+        )
         return {
             "stage": self.stage, "measure_no": i, "measure": measure.name, "of": measure.of, "unit": _unit(measure),
             "side": "axle" if KEYS[measure.of].scope_on(self.work.after.solid) == "axle" else measure.side,
@@ -345,7 +383,10 @@ def position_text(measure) -> str:
     words = [f"{name} {value:g} {units[name]}" for name, value in at.items() if value and name != measure.over]
     if measure.over:
         sweep = measure.sweep
-        words.insert(0, f"{measure.take} over {measure.over} {sweep[0]:g} to {sweep[-1]:g} {units[measure.over]}, {len(sweep)} positions")
+        words.insert(
+            0,
+            f"{measure.take} over {measure.over} {sweep[0]:g} to {sweep[-1]:g} {units[measure.over]}, {len(sweep)} positions",
+        )
     return ", ".join(words) or "at design"
 
 

@@ -62,8 +62,7 @@ def _box(value: Any) -> tuple[float, ...]:
         return (_within("plus_minus", value),) * 3
     if len(value) != 3 or any(not 0.0 <= v <= _MOST_MM for v in value) or not any(value):
         raise ZoneError(
-            f"plus_minus = {list(value)} must be a number or three (x, y, z), each 0 to {_MOST_MM:g} mm and "
-            "not all 0"
+            f"plus_minus = {list(value)} must be a number or three (x, y, z), each 0 to {_MOST_MM:g} mm and not all 0"
         )
     return tuple(float(v) for v in value)
 

@@ -54,9 +54,7 @@ class ZoneField:
 
     def support(self, gradients: np.ndarray) -> np.ndarray:
         """Greatest g·e in each zone (zones, P), for gradients (D, P)."""
-        parts = [
-            zones.support(zone, gradients[rows]) for zone, rows in zip(self.zones, self.rows, strict=True)
-        ]
+        parts = [zones.support(zone, gradients[rows]) for zone, rows in zip(self.zones, self.rows, strict=True)]
         return np.array(parts).reshape(len(self.zones), gradients.shape[1])
 
     def _stacked(self, function, array: np.ndarray) -> np.ndarray:

@@ -7,6 +7,7 @@ They move the part's own feature in the part's own frame, and lengths follow fro
 from __future__ import annotations
 
 import numpy as np
+from scipy.spatial.transform import Rotation
 
 from tests.independent import Body, Link, Spring, Tyre, ground_of, spin_axis
 
@@ -87,8 +88,7 @@ def tilted(spin, first: float, second: float):
     normal = normal / np.linalg.norm(normal)
     other = np.cross(spin, normal)
     other = other * np.sign(other[np.argmax(np.abs(other))])
-    moved = spin + np.cross(first * normal + second * other, spin)
-    return moved / np.linalg.norm(moved)
+    return Rotation.from_rotvec(first * normal + second * other).apply(spin)
 
 
 def spring_of(parts: Parts, spring_on: str, arm_ends=None) -> Spring | None:

@@ -1,7 +1,7 @@
 """Every chart of a study. Result tables (lists of dict rows) in, Altair charts out.
 
-Importing this package imports Altair: import it only where charts are made. The `…_spec` functions give the same
-charts as finished Vega-Lite dicts, which is quicker where a page takes them as they are.
+Importing this package imports Altair: import it only where charts are made. The `…_spec` functions give
+the same charts as finished Vega-Lite dicts, which is quicker where a page takes them as they are.
 """
 
 from study.charts.curves import curve, curve_kinds, curve_spec
@@ -12,8 +12,21 @@ from study.charts.tables import Tables, measures
 from study.charts.together import correlations, correlations_spec, demand, demand_spec
 from study.charts.views import view, view_spec
 
-__all__ = ["ChartExportError", "correlations", "curve", "curve_kinds", "demand", "distribution", "every", "export",
-           "matrix", "measures", "ranking", "safe_stem", "view"]
+__all__ = [
+    "ChartExportError",
+    "correlations",
+    "curve",
+    "curve_kinds",
+    "demand",
+    "distribution",
+    "every",
+    "export",
+    "matrix",
+    "measures",
+    "ranking",
+    "safe_stem",
+    "view",
+]
 
 VIEWS = ("front", "side", "top")
 

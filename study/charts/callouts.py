@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 
 LINE_PX = 12
-CHAR_PX = 5.9
+CHAR_PX = 5.5
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,7 +38,9 @@ class Callout:
         return [(self.spot.x, self.spot.y), (self.x + inward, self.y)]
 
 
-def place(spots: list[Spot], *, width: float, height: float, left_edge: float, right_edge: float) -> list[Callout]:
+def place(
+    spots: list[Spot], *, width: float, height: float, left_edge: float, right_edge: float
+) -> list[Callout]:
     """Labels in a column that ends at `left_edge` and one that begins at `right_edge`, inside the drawing.
 
     Each spot goes to the nearer column; the columns are then evened out so that both fit the height.

@@ -27,8 +27,10 @@ def curve(tables: tb.Tables, axis: str, key: str, **options) -> alt.LayerChart |
 
 
 def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, height: int = 200) -> dict | None:
-    """One measure along one input: a line per side (solid left, dashed right) with the bands of 50 and 90 % of the
-    builds; a second side's band is drawn by its dashed edges, or left out where both sides are alike."""
+    """One measure along one input: a line per side (solid left, dashed right) over the bands of 50 and 90 %.
+
+    A second side's band is drawn by its dashed edges, or left out where both sides are alike.
+    """
     found = curve_rows(tables, axis, key)
     if not found:
         return None
@@ -40,55 +42,86 @@ def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, heig
     along = unit_text(unit)
     return fill(
         _template(len(sides) > 1),
-        data={"line": found, "band": [row for row in found if row["side"] == sides[0]],
-              "edges": [row for row in found if row["side"] != sides[0]]},
-        slots={"sides": sides, "colours": [_SIDES[side][0] for side in sides],
-               "dashes": [_SIDES[side][1] for side in sides], "x": [f"{words}, {unit_x}"]},
+        data={
+            "line": found,
+            "band": [row for row in found if row["side"] == sides[0]],
+            "edges": [row for row in found if row["side"] != sides[0]],
+        },
+        slots={
+            "sides": sides,
+            "colours": [_SIDES[side][0] for side in sides],
+            "dashes": [_SIDES[side][1] for side in sides],
+            "x": [f"{words}, {unit_x}"],
+        },
         title=f"{key_name(key).capitalize()} in {called}" + (f", {along}" if along else ""),
-        subtitle=("left, right alike; " if alike else "") + "line: nominal; bands: middle 50 and 90 % of builds",
-        description=_description(found, key, words, unit), width=width, height=height,
+        subtitle=("left, right alike; " if alike else "")
+        + "line: nominal; bands: middle 50 and 90 % of builds",
+        description=_description(found, key, words, unit),
+        width=width,
+        height=height,
     )
 
 
 def _alike(found: list[dict]) -> bool:
-    """Whether the right side's curve would lie on the left's: the same nominal, and edges within 5 % of the band."""
+    """Whether the right side's curve would lie on the left's, within 5 % of the band."""
     left, right = ([row for row in found if row["side"] == side] for side in ("left", "right"))
     if not left or [row["x"] for row in left] != [row["x"] for row in right]:
         return False
-    pairs = [(a[name], b[name]) for a, b in zip(left, right, strict=True) for name in ("nominal", "q05", "q95")]
+    pairs = [
+        (a[name], b[name]) for a, b in zip(left, right, strict=True) for name in ("nominal", "q05", "q95")
+    ]
     known = [(a, b) for a, b in pairs if a is not None and b is not None]
-    band = max((row["q95"] - row["q05"] for row in left if row["q05"] is not None and row["q95"] is not None), default=0.0)
+    band = max(
+        (row["q95"] - row["q05"] for row in left if row["q05"] is not None and row["q95"] is not None),
+        default=0.0,
+    )
     room = 0.05 * band or 1e-9
     return len(known) == sum(a is not None or b is not None for a, b in pairs) and all(
-        abs(a - b) <= room for a, b in known)
+        abs(a - b) <= room for a, b in known
+    )
 
 
 def curve_rows(tables: tb.Tables, axis: str, key: str) -> list[dict]:
     """The numbers of one curve at the last stage, by side and x; what is undefined is None."""
     found = [row for row in tables.get("curves", []) if row.get("axis") == axis and row.get("key") == key]
     stage = (tb.stages(found) or [None])[-1]
-    kept = [{name: finite(row.get(name)) for name in ("x", "nominal", *_FIELDS)}
-            | {"side": row.get("side") or "left", "unit": row.get("unit")}
-            for row in found if row.get("stage") in (stage, None)]
+    kept = [
+        {name: finite(row.get(name)) for name in ("x", "nominal", *_FIELDS)}
+        | {"side": row.get("side") or "left", "unit": row.get("unit")}
+        for row in found
+        if row.get("stage") in (stage, None)
+    ]
     return sorted(kept, key=lambda row: (row["side"], row["x"]))
 
 
 @cache
 def _template(several: bool) -> dict:
     legend = alt.Legend(symbolType="stroke", symbolOpacity=1, symbolSize=300) if several else None
-    colour = label(alt.Color, "side", scale=alt.Scale(domain=slot("sides"), range=slot("colours")), legend=legend)
-    dash = label(alt.StrokeDash, "side", scale=alt.Scale(domain=slot("sides"), range=slot("dashes")), legend=legend)
+    colour = label(
+        alt.Color, "side", scale=alt.Scale(domain=slot("sides"), range=slot("colours")), legend=legend
+    )
+    dash = label(
+        alt.StrokeDash, "side", scale=alt.Scale(domain=slot("sides"), range=slot("dashes")), legend=legend
+    )
     x = amount(alt.X, "x", title=slot("x"), scale=alt.Scale(nice=False), axis=alt.Axis(tickCount=6))
     scale = alt.Scale(zero=False)
     bands = [
-        alt.Chart(rows("band")).mark_area(opacity=opacity).encode(
-            x=x, y=amount(alt.Y, low, title=None, scale=scale), y2=end(alt.Y2, high), color=colour)
+        alt.Chart(rows("band"))
+        .mark_area(opacity=opacity)
+        .encode(x=x, y=amount(alt.Y, low, title=None, scale=scale), y2=end(alt.Y2, high), color=colour)
         for low, high, opacity in (("q05", "q95", 0.16), ("q25", "q75", 0.26))
     ]
-    bands += [alt.Chart(rows("edges")).mark_line(strokeWidth=1).encode(
-        x=x, y=amount(alt.Y, field, title=None, scale=scale), color=colour, strokeDash=dash) for field in ("q05", "q95")]
-    line = alt.Chart(rows("line")).mark_line(strokeWidth=2.2).encode(
-        x=x, y=amount(alt.Y, "nominal", title=None, scale=scale), color=colour, strokeDash=dash)
+    bands += [
+        alt.Chart(rows("edges"))
+        .mark_line(strokeWidth=1)
+        .encode(x=x, y=amount(alt.Y, field, title=None, scale=scale), color=colour, strokeDash=dash)
+        for field in ("q05", "q95")
+    ]
+    line = (
+        alt.Chart(rows("line"))
+        .mark_line(strokeWidth=2.2)
+        .encode(x=x, y=amount(alt.Y, "nominal", title=None, scale=scale), color=colour, strokeDash=dash)
+    )
     return template(*bands, line)
 
 
@@ -97,6 +130,8 @@ def _description(found: list[dict], key: str, words: str, unit: str | None) -> s
     if not known:
         return f"{key_name(key)} along {words}: not defined."
     first, last = known[0], known[-1]
-    return (f"{key_name(key)} along {words}, nominal with the band of the builds: "
-            f"{quantity(first['nominal'], unit)} at {quantity(first['x'], None)}, "
-            f"{quantity(last['nominal'], unit)} at {quantity(last['x'], None)}.")
+    return (
+        f"{key_name(key)} along {words}, nominal with the band of the builds: "
+        f"{quantity(first['nominal'], unit)} at {quantity(first['x'], None)}, "
+        f"{quantity(last['nominal'], unit)} at {quantity(last['x'], None)}."
+    )

@@ -25,7 +25,7 @@ def safe_stem(text: str) -> str:
 
 
 def export(chart, folder: Path, stem: str) -> list[Path]:
-    """Write STEM.svg, .png, .pdf and .vl.json into `folder` (made when missing); returns the paths in that order.
+    """Write STEM.svg, .png, .pdf and .vl.json into `folder`, made when missing; returns the paths so ordered.
 
     `chart` is an Altair chart or a finished Vega-Lite specification.
 
@@ -55,7 +55,7 @@ def _write(folder: Path, name: str, content: bytes) -> Path:
         path.write_bytes(content)
     except OSError as error:
         raise ChartExportError(
-            f"Chart file {path} could not be written ({error.strerror}). Choose a folder that you may write to."
+            f"Chart file {path} could not be written ({error.strerror}). Choose a folder that you can use."
         ) from error
     return path
 

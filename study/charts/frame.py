@@ -4,10 +4,10 @@ from dataclasses import dataclass
 
 from study.charts import places
 
-WIDTHS = {"front": 1080.0, "side": 530.0, "top": 530.0}
-# kept free: above and below the drawing, beside its outermost lines, and beside its outermost points for their labels
+WIDTHS = {"front": 980.0, "side": 530.0, "top": 530.0}
+# kept free: above and below the drawing, beside its lines, and beside its outermost points for their labels
 _TOP_PX, _FOOT_PX, _EDGE_PX = 26.0, 34.0, 12.0
-_LABEL_PX = {"front": 190.0, "side": 136.0, "top": 136.0}
+_LABEL_PX = {"front": 190.0, "side": 150.0, "top": 150.0}
 _MOST_DOWN_PX = 420.0
 
 
@@ -23,8 +23,10 @@ class Frame:
 
     def px(self, point) -> tuple[float, float]:
         across, up = flat(self.kind, point)
-        return (round(self.left_px + (across - self.left_mm) * self.px_per_mm, 1),
-                round(_TOP_PX + (self.top_mm - up) * self.px_per_mm, 1))
+        return (
+            round(self.left_px + (across - self.left_mm) * self.px_per_mm, 1),
+            round(_TOP_PX + (self.top_mm - up) * self.px_per_mm, 1),
+        )
 
 
 def flat(kind: str, point) -> tuple[float, float]:
@@ -43,6 +45,7 @@ def frame(geometry: places.Geometry, kind: str) -> Frame:
     shown = sides(geometry, kind)
     outline = [point for side in shown for point in places.tyre(geometry["wheel"][side])]
     points = [point for side in shown for point in geometry[side].values()]
+    points += [places.along_hub(geometry["wheel"][side]) for side in shown]
     drawn = [flat(kind, point) for point in [*outline, *points]]
     low, high = min(h for h, _ in drawn), max(h for h, _ in drawn)
     ground = [geometry["ground_mm"]] if kind != "top" else []
@@ -60,14 +63,21 @@ def frame(geometry: places.Geometry, kind: str) -> Frame:
 
 
 def _fit(width: float, label_px: float, drawn: tuple, labelled: tuple) -> tuple[float, float]:
-    """Largest scale, and where the drawing starts, with `label_px` free outside the labelled stretch on both sides
+    """Largest scale, and where the drawing starts, with `label_px` free on both sides of the labelled stretch
     (on the right only where that stretch is a single place)."""
     single = labelled[0] == labelled[1]
     before = _EDGE_PX if single else label_px
     first = drawn[0] if single else labelled[0]
-    scale = min((width - a - b) / (end - start)
-                for start, a in ((drawn[0], _EDGE_PX), (first, before))
-                for end, b in ((drawn[1], _EDGE_PX), (labelled[1], label_px)) if end > start)
+    scale = min(
+        (width - a - b) / (end - start)
+        for start, a in ((drawn[0], _EDGE_PX), (first, before))
+        for end, b in ((drawn[1], _EDGE_PX), (labelled[1], label_px))
+        if end > start
+    )
     left_px = max(_EDGE_PX, before - (first - drawn[0]) * scale)
-    spare = width - left_px - max((drawn[1] - drawn[0]) * scale + _EDGE_PX, (labelled[1] - drawn[0]) * scale + label_px)
+    spare = (
+        width
+        - left_px
+        - max((drawn[1] - drawn[0]) * scale + _EDGE_PX, (labelled[1] - drawn[0]) * scale + label_px)
+    )
     return scale, left_px + max(spare, 0.0) / 2

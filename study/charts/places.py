@@ -4,7 +4,8 @@ The geometry is a plain dict:
     name, linkage     text
     left, right       {point name: (x, y, z)}; a solid axle has the same points in both
     lines             [(point_a, point_b, part)]; drawn on both sides
-    wheel             {"left": {"centre": (x, y, z), "axis": (x, y, z) pointing outboard, "radius_mm": r}, "right": …}
+    wheel             {"left": {"centre": (x, y, z), "axis": (x, y, z) pointing outboard, "radius_mm": r},
+                      "right": …}
     ground_mm         height of the road plane at design
     roll_centre_mm    optional (y, height above ground)
 """
@@ -42,15 +43,22 @@ def source_place(geometry: Geometry, source: str, side: str = "left") -> Point |
     if feature == "wheel_centre":
         return tuple(geometry["wheel"][side]["centre"])
     if feature == "hub_axis":
-        return _along_hub(geometry["wheel"][side])
+        return along_hub(geometry["wheel"][side])
     if source == "rack.mount":
-        return _mean([(x, 0.0, z) for x, _, z in [points["tie_rod_inner"]]]) if "tie_rod_inner" in points else None
+        return (
+            _mean([(x, 0.0, z) for x, _, z in [points["tie_rod_inner"]]])
+            if "tie_rod_inner" in points
+            else None
+        )
     ends = _BETWEEN.get(source, (f"{part}_inner", f"{part}_outer"))
     return _mean([points[end] for end in ends]) if all(end in points for end in ends) else None
 
 
-def _along_hub(wheel: Mapping, share: float = 0.3) -> Point:
-    return tuple(c + share * wheel["radius_mm"] * a for c, a in zip(wheel["centre"], wheel["axis"], strict=True))
+def along_hub(wheel: Mapping, share: float = 0.2) -> Point:
+    """A place on the spin axis, outboard of the wheel centre."""
+    return tuple(
+        c + share * wheel["radius_mm"] * a for c, a in zip(wheel["centre"], wheel["axis"], strict=True)
+    )
 
 
 def _mean(points: list) -> Point:
@@ -107,7 +115,7 @@ def two_sides(geometry: Geometry) -> bool:
 
 
 def roll_centre(geometry: Geometry, tables: Mapping) -> tuple[float, float] | None:
-    """(y, z) of the roll centre in car coordinates: as given, else from a measure at design that was studied."""
+    """(y, z) of the roll centre in car coordinates: as given, else from a measure studied at design."""
     given = geometry.get("roll_centre_mm")
     if given is not None:
         return float(given[0]), float(given[1]) + geometry["ground_mm"]

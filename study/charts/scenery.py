@@ -1,4 +1,4 @@
-"""What stands behind the pivots in a view: wheels, ground, links, roll centre, scale bar, directions. Pixel rows."""
+"""What stands behind the pivots in a view, in pixels: wheels, ground, links, roll centre, scale bar, words."""
 
 from collections.abc import Mapping
 
@@ -13,9 +13,16 @@ _LINK = "#777f86"
 def scenery(frame: Frame, geometry: places.Geometry, tables: Mapping) -> dict[str, list[dict]]:
     """The data called tyres, rules, words_left, words_center and words_right."""
     words = [*_scale_words(frame), *_roll_words(frame, geometry, tables)]
-    rules = [*_ground(frame, geometry), *_links(frame, geometry), *_roll_lines(frame, geometry, tables), *_scale_bar(frame)]
+    rules = [
+        *_ground(frame, geometry),
+        *_links(frame, geometry),
+        *_roll_lines(frame, geometry, tables),
+        *_scale_bar(frame),
+    ]
     return {"tyres": _tyres(frame, geometry), "rules": rules} | {
-        f"words_{align}": [word for word in words if word["a"] == align] for align in ("left", "center", "right")}
+        f"words_{align}": [word for word in words if word["a"] == align]
+        for align in ("left", "center", "right")
+    }
 
 
 def _tyres(frame: Frame, geometry: places.Geometry) -> list[dict]:
@@ -42,8 +49,12 @@ def _ground(frame: Frame, geometry: places.Geometry) -> list[dict]:
 
 def _links(frame: Frame, geometry: places.Geometry) -> list[dict]:
     shown = sides(geometry, frame.kind) if places.two_sides(geometry) else ["left"]
-    return [_rule(frame.px(geometry[side][a]), frame.px(geometry[side][b]), colour=_LINK, width=2.4)
-            for side in shown for a, b, _ in geometry["lines"] if a in geometry[side] and b in geometry[side]]
+    return [
+        _rule(frame.px(geometry[side][a]), frame.px(geometry[side][b]), colour=_LINK, width=2.4)
+        for side in shown
+        for a, b, _ in geometry["lines"]
+        if a in geometry[side] and b in geometry[side]
+    ]
 
 
 def _roll_lines(frame: Frame, geometry: places.Geometry, tables: Mapping) -> list[dict]:
@@ -52,9 +63,15 @@ def _roll_lines(frame: Frame, geometry: places.Geometry, tables: Mapping) -> lis
     if centre is None:
         return []
     x, y = frame.px((0.0, *centre))
-    lines = [_rule(frame.px(places.contact(geometry["wheel"][side])), (x, y), dash="dash") for side in ("left", "right")]
-    return [*lines, _rule((x - 9, y), (x + 9, y), colour=theme.INK, width=1.8),
-            _rule((x, y - 9), (x, y + 9), colour=theme.INK, width=1.8)]
+    lines = [
+        _rule(frame.px(places.contact(geometry["wheel"][side])), (x, y), dash="dash")
+        for side in ("left", "right")
+    ]
+    return [
+        *lines,
+        _rule((x - 9, y), (x + 9, y), colour=theme.INK, width=1.8),
+        _rule((x, y - 9), (x, y + 9), colour=theme.INK, width=1.8),
+    ]
 
 
 def _roll_words(frame: Frame, geometry: places.Geometry, tables: Mapping) -> list[dict]:
@@ -69,11 +86,15 @@ def _roll_words(frame: Frame, geometry: places.Geometry, tables: Mapping) -> lis
 
 def _scale_bar(frame: Frame) -> list[dict]:
     y, long = frame.height - 9, 100 * frame.px_per_mm
-    return [_rule((8, y), (8 + long, y), colour=theme.INK, width=2.0),
-            *(_rule((x, y - 4), (x, y + 4), colour=theme.INK) for x in (8, 8 + long))]
+    return [
+        _rule((8, y), (8 + long, y), colour=theme.INK, width=2.0),
+        *(_rule((x, y - 4), (x, y + 4), colour=theme.INK) for x in (8, 8 + long)),
+    ]
 
 
 def _scale_words(frame: Frame) -> list[dict]:
     y = frame.height - 9
-    return [{"x": 14 + 100 * frame.px_per_mm, "y": y, "t": "100 mm", "a": "left"},
-            {"x": frame.width - 6, "y": y, "t": _FORWARD[frame.kind], "a": "right"}]
+    return [
+        {"x": 14 + 100 * frame.px_per_mm, "y": y, "t": "100 mm", "a": "left"},
+        {"x": frame.width - 6, "y": y, "t": _FORWARD[frame.kind], "a": "right"},
+    ]

@@ -1,4 +1,4 @@
-"""Reading the result tables: which stage is shown, in which order, by which number. Lists of dict rows in and out."""
+"""Reading the result tables: which stage is shown, in which order, by which number. Dict rows in and out."""
 
 import math
 from collections.abc import Iterable, Mapping
@@ -54,7 +54,8 @@ def last_stage(tables: Tables) -> str:
 
 
 def measures(tables: Tables) -> list[dict]:
-    """One row per measure, in number order: measure_no, measure, of, unit, name (for people), place (1, 2, …)."""
+    """One row per measure, in number order: measure_no, measure, of, unit, name (for people), place (1, 2,
+    …)."""
     found: dict[int, dict] = {}
     for row in [*tables.get("stats", []), *tables.get("ranking", [])]:
         number = row.get("measure_no")
@@ -75,7 +76,9 @@ def basis_of(rows: list[dict]) -> Basis | None:
 
 def ranked(tables: Tables, measure_no: int, stage: str) -> list[dict]:
     """The ranking rows of one measure and stage, strongest first."""
-    rows = [r for r in tables.get("ranking", []) if r.get("measure_no") == measure_no and r.get("stage") == stage]
+    rows = [
+        r for r in tables.get("ranking", []) if r.get("measure_no") == measure_no and r.get("stage") == stage
+    ]
     basis = basis_of(rows)
     if basis is None:
         return []
@@ -118,6 +121,11 @@ def greatest(tables: Tables, stage: str) -> dict[str, dict]:
             continue
         for row, value in zip(rows, relative(rows, basis).values(), strict=True):
             if row["source"] not in best or value > best[row["source"]]["value"]:
-                best[row["source"]] = {"value": value, "text": strength_text(row, basis), "row": row,
-                                       "measure": head["name"], "measure_no": head["measure_no"]}
+                best[row["source"]] = {
+                    "value": value,
+                    "text": strength_text(row, basis),
+                    "row": row,
+                    "measure": head["name"],
+                    "measure_no": head["measure_no"],
+                }
     return dict(sorted(best.items(), key=lambda item: -item[1]["value"]))

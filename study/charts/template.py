@@ -1,7 +1,7 @@
 """One Altair chart per kind, filled many times.
 
-Altair takes some 50 ms to put a layered chart together; a sheet has thirty of them. So each kind is made once with
-named data and slots, and is then filled with the rows, orders and domains of each measure.
+Altair takes some 50 ms to put a layered chart together; a sheet has thirty of them. So each kind is made
+once with named data and slots, and is then filled with the rows, orders and domains of each measure.
 """
 
 import altair as alt
@@ -42,8 +42,18 @@ def template(*layers) -> dict:
     return alt.layer(*layers).configure(**theme.CONFIG).to_dict(validate=False)
 
 
-def fill(made: dict, *, data: dict[str, list[dict]], slots: dict[str, list], title: str, subtitle: str = "",
-         description: str, width: float, height: float, params: dict | None = None) -> dict:
+def fill(
+    made: dict,
+    *,
+    data: dict[str, list[dict]],
+    slots: dict[str, list],
+    title: str,
+    subtitle: str = "",
+    description: str,
+    width: float,
+    height: float,
+    params: dict | None = None,
+) -> dict:
     """A finished Vega-Lite specification. `description` becomes the label that is read aloud."""
     spec = _put(made, slots)
     spec["title"] = {"text": title, "subtitle": subtitle} if subtitle else {"text": title}

@@ -15,7 +15,7 @@ from study.charts.words import source_name
 ALL = -1
 _TITLES = {"front": "Front view", "side": "Side view, left side", "top": "Top view, left side"}
 _LEAST_LABELLED = 0.03
-_LONGEST = {"front": 34, "side": 21, "top": 21}
+_LONGEST = {"front": 34, "side": 25, "top": 25}
 
 
 def view(geometry: places.Geometry, tables: tb.Tables, kind: str, **options) -> alt.LayerChart:
@@ -23,12 +23,19 @@ def view(geometry: places.Geometry, tables: tb.Tables, kind: str, **options) -> 
     return as_chart(view_spec(geometry, tables, kind, **options))
 
 
-def view_spec(geometry: places.Geometry, tables: tb.Tables, kind: str, *, measure_no: int | None = None,
-              choose: bool = False, stage: str | None = None) -> dict:
+def view_spec(
+    geometry: places.Geometry,
+    tables: tb.Tables,
+    kind: str,
+    *,
+    measure_no: int | None = None,
+    choose: bool = False,
+    stage: str | None = None,
+) -> dict:
     """One view (`front`, `side` or `top`), marker area by share of variance, the geometry as in `places`.
 
-    `measure_no` None shows each source with the measure that it governs most. With `choose` the chart carries all
-    measures and its parameter `shown` (a measure number, -1 for all together) selects one.
+    `measure_no` None shows each source with the measure that it governs most. With `choose` the chart
+    carries all measures, and its parameter `shown` (a measure number, -1 for all together) selects one.
     """
     stage = stage or tb.last_stage(tables)
     drawn = frame(geometry, kind)
@@ -39,27 +46,40 @@ def view_spec(geometry: places.Geometry, tables: tb.Tables, kind: str, *, measur
         _add(data, drawn, geometry, strengths(tables, which, stage), which)
     families = [name for name in theme.FAMILIES if any(mark["s"] == name for mark in data["marks"])]
     return fill(
-        _template(), data=data | scenery(drawn, geometry, tables), params={"shown": first},
-        slots={"across": [0, drawn.width], "down": [drawn.height, 0], "families": families,
-               "shapes": [theme.FAMILIES[name][1] for name in families],
-               "colours": [theme.FAMILIES[name][0] for name in families]},
-        title=_TITLES[kind], subtitle="" if choose else _subtitle(tables, measure_no, stage),
-        description=_description(geometry, tables, kind, first, stage), width=drawn.width, height=drawn.height,
+        _template(),
+        data=data | scenery(drawn, geometry, tables),
+        params={"shown": first},
+        slots={
+            "across": [0, drawn.width],
+            "down": [drawn.height, 0],
+            "families": families,
+            "shapes": [theme.FAMILIES[name][1] for name in families],
+            "colours": [theme.FAMILIES[name][0] for name in families],
+        },
+        title=_TITLES[kind],
+        subtitle="" if choose else _subtitle(tables, measure_no, stage),
+        description=_description(geometry, tables, kind, first, stage),
+        width=drawn.width,
+        height=drawn.height,
     )
 
 
 def strengths(tables: tb.Tables, which: int, stage: str) -> dict[str, tuple[float, tuple[str, ...]]]:
     """Source to its strength (0 to 1) and the lines of its label; `which` is a measure number or ALL."""
     if which == ALL:
-        return {source: (best["value"], (source_name(source), f"{best['text']} {best['measure']}"))
-                for source, best in tb.greatest(tables, stage).items()}
+        return {
+            source: (best["value"], (source_name(source), f"{best['text']} {best['measure']}"))
+            for source, best in tb.greatest(tables, stage).items()
+        }
     ranked = tb.ranked(tables, which, stage)
     if not ranked:
         return {}
     basis = tb.basis_of(ranked)
     values = tb.relative(ranked, basis)
-    return {row["source"]: (values[row["source"]], (source_name(row["source"]), tb.strength_text(row, basis)))
-            for row in ranked}
+    return {
+        row["source"]: (values[row["source"]], (source_name(row["source"]), tb.strength_text(row, basis)))
+        for row in ranked
+    }
 
 
 def _add(data: dict, drawn: Frame, geometry: places.Geometry, strong: dict, which: int) -> None:
@@ -70,15 +90,31 @@ def _add(data: dict, drawn: Frame, geometry: places.Geometry, strong: dict, whic
         if point is None:
             continue
         x, y = drawn.px(point)
-        data["marks"].append({"m": which, "x": x, "y": y, "v": round(value, 4), "t": ": ".join(lines),
-                              "s": theme.family(source.split(".")[0])})
+        data["marks"].append(
+            {
+                "m": which,
+                "x": x,
+                "y": y,
+                "v": round(value, 4),
+                "t": ": ".join(lines),
+                "s": theme.family(source.split(".")[0]),
+            }
+        )
         if value >= _LEAST_LABELLED and len(spots) < min(10, 2 * int((drawn.height - 30) // 31)):
             spots.append(Spot(source, x, y, _fitted(lines, drawn.kind)))
-    for callout in place(spots, width=drawn.width, height=drawn.height - 46, **_columns(drawn, geometry, spots)):
+    for callout in place(
+        spots, width=drawn.width, height=drawn.height - 46, **_columns(drawn, geometry, spots)
+    ):
         (x, y), (x2, y2) = callout.leader()
         data["leaders"].append({"m": which, "x": x, "y": y, "x2": round(x2, 1), "y2": round(y2, 1)})
         data[f"labels_{callout.align}"].append(
-            {"m": which, "x": round(callout.x, 1), "y": round(callout.y, 1), "t": "\n".join(callout.spot.lines)})
+            {
+                "m": which,
+                "x": round(callout.x, 1),
+                "y": round(callout.y, 1),
+                "t": "\n".join(callout.spot.lines),
+            }
+        )
 
 
 def _fitted(lines: tuple[str, ...], kind: str) -> tuple[str, ...]:
@@ -91,10 +127,13 @@ def _fitted(lines: tuple[str, ...], kind: str) -> tuple[str, ...]:
 
 def _columns(drawn: Frame, geometry: places.Geometry, spots: list[Spot]) -> dict[str, float]:
     """Where the label columns stand: outside the points, in front view outside the tyre."""
-    first, last = min((spot.x for spot in spots), default=0.0), max((spot.x for spot in spots), default=drawn.width)
+    first, last = (
+        min((spot.x for spot in spots), default=0.0),
+        max((spot.x for spot in spots), default=drawn.width),
+    )
     if drawn.kind == "front" and places.two_sides(geometry):
         last = max(drawn.px(point)[0] for point in places.tyre(geometry["wheel"]["left"]))
-    return {"left_edge": first - 28.0, "right_edge": last + 24.0}
+    return {"left_edge": first - 30.0, "right_edge": last + 26.0}
 
 
 @cache
@@ -108,26 +147,54 @@ def _template() -> dict:
     colours = alt.Scale(domain=slot("families"), range=slot("colours"))
     pick = "datum.m == shown"
     return template(
-        alt.Chart(rows("tyres")).mark_line(stroke=theme.GREY, strokeWidth=1, fill="#eef0f1").encode(
-            x=x, y=y, detail=label(alt.Detail, "g"), order=amount(alt.Order, "o")),
-        alt.Chart(rows("rules")).mark_rule(strokeCap="round").encode(
-            stroke=label(alt.Stroke, "c", scale=None), strokeWidth=amount(alt.StrokeWidth, "w", scale=None),
-            strokeDash=label(alt.StrokeDash, "d", scale=dashes, legend=None), **ends),
+        alt.Chart(rows("tyres"))
+        .mark_line(stroke=theme.GREY, strokeWidth=1, fill="#eef0f1")
+        .encode(x=x, y=y, detail=label(alt.Detail, "g"), order=amount(alt.Order, "o")),
+        alt.Chart(rows("rules"))
+        .mark_rule(strokeCap="round")
+        .encode(
+            stroke=label(alt.Stroke, "c", scale=None),
+            strokeWidth=amount(alt.StrokeWidth, "w", scale=None),
+            strokeDash=label(alt.StrokeDash, "d", scale=dashes, legend=None),
+            **ends,
+        ),
         *(_text(f"words_{align}", align, x, y) for align in ("left", "center", "right")),
-        alt.Chart(rows("leaders")).mark_rule(stroke=theme.SOFT, strokeWidth=0.8).encode(**ends).transform_filter(pick),
-        alt.Chart(rows("marks")).mark_point(filled=True, opacity=0.92, stroke=theme.PAPER, strokeWidth=1).encode(
-            x=x, y=y, size=amount(alt.Size, "v", scale=alt.Scale(domain=[0, 1], range=[26, 1400]), legend=None),
-            shape=label(alt.Shape, "s", scale=shapes, legend=legend), tooltip=label(alt.Tooltip, "t", title="source"),
-            color=label(alt.Color, "s", scale=colours, legend=legend)).transform_filter(pick),
-        *(_text(f"labels_{align}", align, x, y, **halo).transform_filter(pick)
-          for halo in (theme.HALO, {}) for align in ("left", "right")),
+        alt.Chart(rows("leaders"))
+        .mark_rule(stroke=theme.SOFT, strokeWidth=0.8)
+        .encode(**ends)
+        .transform_filter(pick),
+        alt.Chart(rows("marks"))
+        .mark_point(filled=True, opacity=0.92, stroke=theme.PAPER, strokeWidth=1)
+        .encode(
+            x=x,
+            y=y,
+            size=amount(alt.Size, "v", scale=alt.Scale(domain=[0, 1], range=[26, 1400]), legend=None),
+            shape=label(alt.Shape, "s", scale=shapes, legend=legend),
+            tooltip=label(alt.Tooltip, "t", title="source"),
+            color=label(alt.Color, "s", scale=colours, legend=legend),
+        )
+        .transform_filter(pick),
+        *(
+            _text(f"labels_{align}", align, x, y, **halo).transform_filter(pick)
+            for halo in (theme.HALO, {})
+            for align in ("left", "right")
+        ),
     )
 
 
 def _text(name: str, align: str, x: alt.X, y: alt.Y, **style) -> alt.Chart:
-    return alt.Chart(rows(name)).mark_text(
-        align=align, baseline="middle", fontSize=11, lineHeight=12, lineBreak="\n", **style,
-    ).encode(x=x, y=y, text=label(alt.Text, "t"))
+    return (
+        alt.Chart(rows(name))
+        .mark_text(
+            align=align,
+            baseline="middle",
+            fontSize=11,
+            lineHeight=12,
+            lineBreak="\n",
+            **style,
+        )
+        .encode(x=x, y=y, text=label(alt.Text, "t"))
+    )
 
 
 def _subtitle(tables: tb.Tables, measure_no: int | None, stage: str) -> str:
@@ -141,4 +208,5 @@ def _description(geometry: places.Geometry, tables: tb.Tables, kind: str, which:
     placed = [source for source, _ in order if places.source_place(geometry, source)]
     first = ", ".join(source_name(source) for source in placed[:3])
     tail = f" Largest markers: {first}." if first else ""
-    return f"{_TITLES[kind]} of {geometry.get('name') or geometry['linkage']}, to scale, at design position.{tail}"
+    name = geometry.get("name") or geometry["linkage"]
+    return f"{_TITLES[kind]} of {name}, to scale, at design position.{tail}"

@@ -1,4 +1,4 @@
-"""Numbers, units and names as an engineer reads them; shared by the charts and the sheet. Plain text, not escaped."""
+"""Numbers, units and names as an engineer reads them; for charts and sheet. Plain text, not escaped."""
 
 import math
 from collections.abc import Iterable, Mapping
@@ -91,7 +91,7 @@ def measure_name(row: Mapping) -> str:
     name = str(row.get("measure") or "")
     key = str(row.get("of") or name.split(" ")[0])
     if name.startswith(key) and "_" in key:
-        name = key_name(key) + name[len(key):]
+        name = key_name(key) + name[len(key) :]
     return name[:1].upper() + name[1:]
 
 

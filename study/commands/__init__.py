@@ -52,6 +52,8 @@ def _kept_traceback(error: Exception) -> str:
     import tempfile
     import traceback
 
-    with tempfile.NamedTemporaryFile("w", prefix="holdtight-fault-", suffix=".txt", delete=False, encoding="utf-8") as file:
+    with tempfile.NamedTemporaryFile(
+        "w", prefix="holdtight-fault-", suffix=".txt", delete=False, encoding="utf-8"
+    ) as file:
         file.writelines(traceback.format_exception(error))
     return f"this is a fault of the program ({type(error).__name__}: {error}); its details are in {file.name}"

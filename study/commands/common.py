@@ -10,7 +10,9 @@ import typer
 
 CatalogOption = Annotated[
     str | None,
-    typer.Option("--catalog", help="The catalog file; else HOLDTIGHT_CATALOG, else holdtight.duckdb here.", show_default=False),
+    typer.Option(
+        "--catalog", help="The catalog file; else HOLDTIGHT_CATALOG, else holdtight.duckdb here.", show_default=False
+    ),
 ]
 JsonOption = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
 
@@ -41,7 +43,11 @@ def number(value, digits=4) -> str:
 
 
 def _exponent(value) -> int:
-    return len(str(int(abs(value)))) - 1 if abs(value) >= 1 else -len(re.match(r"0\.(0*)", f"{abs(value):.12f}").group(1)) - 1
+    return (
+        len(str(int(abs(value)))) - 1
+        if abs(value) >= 1
+        else -len(re.match(r"0\.(0*)", f"{abs(value):.12f}").group(1)) - 1
+    )
 
 
 def print_table(title, columns, rows, *, caption=None) -> None:
@@ -51,9 +57,13 @@ def print_table(title, columns, rows, *, caption=None) -> None:
     from rich.table import Table
     from rich.text import Text
 
-    table = Table(title=Text(clean(title)), title_justify="left", box=box.SIMPLE_HEAD, pad_edge=False, title_style="bold")
+    table = Table(
+        title=Text(clean(title)), title_justify="left", box=box.SIMPLE_HEAD, pad_edge=False, title_style="bold"
+    )
     for heading, justify in columns:
-        table.add_column(heading, justify=justify, overflow="fold", no_wrap=len(table.columns) == 0 or justify == "right")
+        table.add_column(
+            heading, justify=justify, overflow="fold", no_wrap=len(table.columns) == 0 or justify == "right"
+        )
     for row in rows:
         table.add_row(*(cell if isinstance(cell, Text) else Text(clean(cell)) for cell in row))
     console = Console() if sys.stdout.isatty() else Console(width=WIDTH_UNSEEN)

@@ -13,8 +13,12 @@ class StageError(InputError):
 
 
 def run(
-    study: Annotated[int | None, typer.Argument(help="A study's number; without it, the critical pivots over the catalog.")] = None,
-    stage: Annotated[str | None, typer.Option(help="before or after alignment; else the last the study has.", show_default=False)] = None,
+    study: Annotated[
+        int | None, typer.Argument(help="A study's number; without it, the critical pivots over the catalog.")
+    ] = None,
+    stage: Annotated[
+        str | None, typer.Option(help="before or after alignment; else the last the study has.", show_default=False)
+    ] = None,
     most: Annotated[int, typer.Option(help="Sources shown for each measure.", min=1)] = 6,
     as_json: JsonOption = False,
     catalog: CatalogOption = None,
@@ -41,7 +45,7 @@ def _stage(dossier, given):
         return dossier.stages[-1]
     if given not in dossier.stages:
         raise StageError(
-            f'--stage {given}: study {dossier.study["id"]} has {" and ".join(dossier.stages)}'
+            f"--stage {given}: study {dossier.study['id']} has {' and '.join(dossier.stages)}"
             + ("" if len(dossier.stages) > 1 else " only: it has no [alignment]")
         )
     return given
@@ -68,7 +72,12 @@ def contract(dossier, stage) -> dict:
         ]
         measures.append({key: stats[key] for key in STATS_KEYS} | {"ranking": ranking})
     out = {"study": facts["id"], "title": facts["title"], "geometry": facts["geometry"], "method": facts["method"]}
-    out |= {"stage": stage, "builds": facts["builds"], "unassembled": facts["unassembled"], "withheld": facts["withheld"]}
+    out |= {
+        "stage": stage,
+        "builds": facts["builds"],
+        "unassembled": facts["unassembled"],
+        "withheld": facts["withheld"],
+    }
     out |= {key: facts[key] if stage == last else None for key in ("good_share", "good_low", "good_high", "all_cars")}
     out |= {"measures": measures}
     return out | {key: dossier.tables[key] for key in ("demand", "failures", "worst", "correlations")}
@@ -79,7 +88,9 @@ def print_ranking(dossier, *, stage=None, most=6) -> None:
     stage = stage or dossier.stages[-1]
     facts = dossier.study
     print(f"study {facts['id']}: {clean(facts['title'])}")
-    print(f"{clean(facts['geometry'])}, {facts['method']}, {facts['builds']} builds run, seed {facts['seed']}, sides {facts['sides']}")
+    print(
+        f"{clean(facts['geometry'])}, {facts['method']}, {facts['builds']} builds run, seed {facts['seed']}, sides {facts['sides']}"
+    )
     for note in facts["notes"] or ():
         print(f"note: {clean(note)}")
     for stats in dossier.of_stage("stats", stage):
@@ -87,7 +98,9 @@ def print_ranking(dossier, *, stage=None, most=6) -> None:
     _print_failures(dossier, stage)
     _print_demand(dossier)
     _print_good(facts)
-    print("≈ tied with the one above: the draws cannot tell the two apart. Effects are signed, on the drawing's own axes.")
+    print(
+        "≈ tied with the one above: the draws cannot tell the two apart. Effects are signed, on the drawing's own axes."
+    )
     print("Rigid geometry only. A wider tolerance never overrides a part's strength, edge distance or bearing limits.")
 
 
@@ -160,13 +173,24 @@ def _print_failures(dossier, stage):
     rows = [row for row in dossier.tables["failures"] if row["stage"] == stage]
     if rows:
         columns = [("", "right"), ("source", "left"), ("index of failing", "right")]
-        print_table("\nwhat makes builds fail", columns, [[str(r["rank"]), r["source"], number(r["value"])] for r in rows])
+        print_table(
+            "\nwhat makes builds fail", columns, [[str(r["rank"]), r["source"], number(r["value"])] for r in rows]
+        )
 
 
 def _print_demand(dossier):
-    columns = [("sets", "left"), ("by", "left"), *((h, "right") for h in ("2.5 %", "median", "97.5 %", "least", "most", "ran out"))]
+    columns = [
+        ("sets", "left"),
+        ("by", "left"),
+        *((h, "right") for h in ("2.5 %", "median", "97.5 %", "least", "most", "ran out")),
+    ]
     rows = [
-        [r["adjuster"], r["by"], *(f"{r[k]:+.2f}" for k in ("q025", "q50", "q975", "low", "high")), _percent(r["ran_out_share"])]
+        [
+            r["adjuster"],
+            r["by"],
+            *(f"{r[k]:+.2f}" for k in ("q025", "q50", "q975", "low", "high")),
+            _percent(r["ran_out_share"]),
+        ]
         for r in dossier.tables["demand"]
     ]
     if rows:
@@ -189,7 +213,14 @@ def _over_catalog(store, as_json):
     if as_json:
         print_json(found)
         return
-    columns = [("geometry", "left"), ("study", "right"), ("measure", "left"), ("", "right"), ("source", "left"), ("share", "right")]
+    columns = [
+        ("geometry", "left"),
+        ("study", "right"),
+        ("measure", "left"),
+        ("", "right"),
+        ("source", "left"),
+        ("share", "right"),
+    ]
     rows = [
         [f"{r['geometry']}@{r['revision']}", str(r["study"]), r["measure"], str(r["rank"]), r["source"], _percent(r["st"] if r["st"] is not None else r["linear_share"])]
         for r in found

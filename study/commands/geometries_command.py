@@ -13,7 +13,14 @@ def run(as_json: JsonOption = False, catalog: CatalogOption = None) -> None:
     if as_json:
         print_json([_plain(r) for r in found])
         return
-    columns = [("geometry", "left"), ("linkage", "left"), ("axle", "left"), ("created (UTC)", "left"), ("by", "left"), ("why", "left")]
+    columns = [
+        ("geometry", "left"),
+        ("linkage", "left"),
+        ("axle", "left"),
+        ("created (UTC)", "left"),
+        ("by", "left"),
+        ("why", "left"),
+    ]
     rows = [[r.spec, r.linkage, r.axle, f"{r.created:%Y-%m-%d %H:%M}", r.by, r.why] for r in found]
     print_table("geometries", columns, rows)
 

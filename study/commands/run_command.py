@@ -11,7 +11,9 @@ from study.commands.common import CatalogOption, JsonOption, by_whom, clean, def
 def run(
     study: Annotated[Path, typer.Argument(help="A study file.")],
     threads: Annotated[int, typer.Option(help="Threads; 0 takes one a core.", min=0, max=256)] = 0,
-    sheet: Annotated[Path | None, typer.Option(help="The sheet's file; else sheets/study-N.html.", show_default=False)] = None,
+    sheet: Annotated[
+        Path | None, typer.Option(help="The sheet's file; else sheets/study-N.html.", show_default=False)
+    ] = None,
     by: Annotated[str | None, typer.Option(help="Who asks; else the login name.", show_default=False)] = None,
     as_json: JsonOption = False,
     catalog: CatalogOption = None,
@@ -31,12 +33,21 @@ def run(
         print(f"study {number} was stopped; what is finished is kept, `holdtight work` goes on with it")
         raise typer.Exit(1)
     from study.dossier import load_dossier
-    from study.sheet import write_sheet
+    from study.handout import write_sheet
 
     dossier = load_dossier(store, number)
     path = write_sheet(dossier, sheet or Path("sheets") / f"study-{number}.html")
     if as_json:
-        print_json({"study": number, "geometry": dossier.study["geometry"], "builds": dossier.study["builds"], "sheet": str(path)})
+        print_json(
+            {
+                "study": number,
+                "geometry": dossier.study["geometry"],
+                "builds": dossier.study["builds"],
+                "sheet": str(path),
+            }
+        )
         return
     print_ranking(dossier)
-    print(f"sheet: {clean(path)}   (`holdtight sheet {number} --charts` writes its charts as SVG, PNG, PDF and Vega-Lite JSON)")
+    print(
+        f"sheet: {clean(path)}   (`holdtight sheet {number} --charts` writes its charts as SVG, PNG, PDF and Vega-Lite JSON)"
+    )

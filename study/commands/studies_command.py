@@ -17,9 +17,23 @@ def run(as_json: JsonOption = False, catalog: CatalogOption = None) -> None:
             for j in jobs
         ])  # fmt: skip
         return
-    columns = [("study", "right"), ("title", "left"), ("geometry", "left"), ("method", "left"), ("state", "left"), ("builds", "right")]
+    columns = [
+        ("study", "right"),
+        ("title", "left"),
+        ("geometry", "left"),
+        ("method", "left"),
+        ("state", "left"),
+        ("builds", "right"),
+    ]
     rows = [
-        [str(j.id), j.title, j.geometry, f"{j.method} {j.size}", j.state + (f": {j.error}" if j.error else ""), _builds(j)]
+        [
+            str(j.id),
+            j.title,
+            j.geometry,
+            f"{j.method} {j.size}",
+            j.state + (f": {j.error}" if j.error else ""),
+            _builds(j),
+        ]
         for j in jobs
     ]
     print_table("studies", columns, rows)

@@ -37,7 +37,9 @@ def run(
         raise SweepError(f'--side {side}: is no side; give "left" or "right"')
     record, label = geometry_named(geometry, catalog)
     found = sweep(record, [tuple(spot.values()) for spot in spots], keys)
-    rows = [{**_named(spot), **{key: _value(f, key, side) for key in keys}} for spot, f in zip(spots, found, strict=True)]
+    rows = [
+        {**_named(spot), **{key: _value(f, key, side) for key in keys}} for spot, f in zip(spots, found, strict=True)
+    ]
     if as_json:
         print_json({"geometry": label, "over": over, "side": side, "rows": rows})
         return
@@ -51,7 +53,7 @@ def _keys(text):
     keys = [key.strip() for key in text.split(",") if key.strip()]
     for key in keys:
         if key not in KEYS:
-            raise SweepError(f'--measures {key}: is not a known measure; {near(key, KEYS)}')
+            raise SweepError(f"--measures {key}: is not a known measure; {near(key, KEYS)}")
     return list(dict.fromkeys(keys))
 
 
@@ -76,4 +78,6 @@ def _print(label, over, keys, rows):
 
     name = {"bump": "bump_mm", "roll": "roll_deg", "rack": "rack_mm"}[over]
     columns = [(name, "right"), *((f"{key}\n[{KEYS[key].unit}]", "right") for key in keys)]
-    print_table(f"{label} over {over}", columns, [[f"{row[name]:g}", *(number(row[key]) for key in keys)] for row in rows])
+    print_table(
+        f"{label} over {over}", columns, [[f"{row[name]:g}", *(number(row[key]) for key in keys)] for row in rows]
+    )

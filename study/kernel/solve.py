@@ -16,7 +16,8 @@ TOLERANCE_MM = 1e-9
 CLOSED, NOT_CLOSED, OTHER_BRANCH = 0, 1, 2
 LEVER_MM = 200.0  # weighs a turn against a shift when pivots are compared
 ROUNDS = 3
-CAREFUL_STEPS = 16
+CAREFUL_STRIDE_MM = 8.0
+CAREFUL_STEPS = 8, 40
 CAREFUL_ITERATIONS = 12
 
 
@@ -138,29 +139,35 @@ def _rescued(rows, road, rest, pose, jacobian):
     return pose, jacobian
 
 
-def solve_carefully(rows, road, *, rest, count):
+def solve_carefully(rows, road, *, rest, count, least_steps=CAREFUL_STEPS[0]):
     """Poses from a place of rest (R = I, t = rest (3, 1) mm) by Newton homotopy.
 
-    F(x) = (1 − λ) F(x₀), λ in CAREFUL_STEPS equal steps: the linkage is drawn gently from where it stands to where it
-    should be, and so stays on its branch. Returns rotation (3, 3, N), t (3, N), worst residual (N,) mm; a residual
-    that is not at or below the tolerance means that the linkage does not close there.
+    F(x) = (1 − λ) F(x₀), λ in equal steps of at most CAREFUL_STRIDE_MM of the widest row: the linkage is drawn gently
+    from where it stands to where it should be, and so stays on its branch. Returns rotation (3, 3, N), t (3, N), worst
+    residual (N,) mm; one that is not at or below the tolerance means that the linkage does not close there, an infinite
+    one that it went over a dead point on the way.
     """
-    place = np.broadcast_to(rest, (3, count)).copy()
+    t = np.broadcast_to(rest, (3, count)).copy()
     rotation = np.broadcast_to(np.eye(3)[:, :, None], (3, 3, count)).copy()
     jacobian = np.empty((6, 6, count))
-    first = linearise(rows, road, rotation, place, jacobian)
+    first = linearise(rows, road, rotation, t, jacobian)
     with np.errstate(all="ignore"):
-        for step in range(1, CAREFUL_STEPS + 1):
-            goal = first * (1.0 - step / CAREFUL_STEPS)
-            rotation, place = _newton(rows, road, rotation, place, goal, jacobian)
-        worst = np.abs(residuals(rows, road, rotation, place)).max(axis=0)
-    return rotation, place, np.where(np.isfinite(worst), worst, np.inf)
+        widest = min(np.nanmax(np.abs(first), initial=0.0), 1e3)
+        steps = min(max(least_steps, int(np.ceil(widest / CAREFUL_STRIDE_MM))), CAREFUL_STEPS[1])
+        branch, strayed = determinant_sign(jacobian), np.zeros(count, bool)
+        for step in range(1, steps + 1):
+            close = 1e-2 * TOLERANCE_MM if step == steps else 1e-2
+            rotation, t = _newton(rows, road, rotation, t, first * (1.0 - step / steps), jacobian, close)
+            strayed |= determinant_sign(jacobian) != branch
+        worst = np.abs(residuals(rows, road, rotation, t)).max(axis=0)
+        worst[strayed] = np.inf
+    return rotation, t, np.where(np.isfinite(worst), worst, np.inf)
 
 
-def _newton(rows, road, rotation, t, goal, jacobian):
+def _newton(rows, road, rotation, t, goal, jacobian, close):
     for _ in range(CAREFUL_ITERATIONS):
         f = linearise(rows, road, rotation, t, jacobian) - goal
-        if np.nanmax(np.abs(f), initial=0.0) <= 1e-2 * TOLERANCE_MM:
+        if np.nanmax(np.abs(f), initial=0.0) <= close:
             break
         step = _lapack(jacobian, -f)
         rotation = np.einsum("ijn,jkn->ikn", gibbs_matrix(0.5 * step[3:]), rotation)
@@ -197,4 +204,3 @@ def singular_values(jacobian):
     a = np.array(jacobian, float)
     a[:, 3:] /= LEVER_MM
     return np.linalg.svd(a, compute_uv=False)
-

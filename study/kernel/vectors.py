@@ -5,19 +5,26 @@ import numpy as np
 
 def cross(a, b):
     """a × b of component-first arrays; the trailing shapes broadcast."""
-    return np.stack(
-        (a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0])
-    )
+    out = np.empty(np.broadcast_shapes(a.shape, b.shape))
+    for i in range(3):
+        j, k = (i + 1) % 3, (i + 2) % 3
+        np.multiply(a[j], b[k], out=out[i])
+        out[i] -= a[k] * b[j]
+    return out
 
 
 def dot(a, b):
     """a · b of component-first arrays."""
-    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
+    out = a[0] * b[0]
+    out += a[1] * b[1]
+    out += a[2] * b[2]
+    return out
 
 
 def norm(a):
     """Length of component-first vectors."""
-    return np.sqrt(dot(a, a))
+    out = dot(a, a)
+    return np.sqrt(out, out=out)
 
 
 def unit(a):
@@ -55,9 +62,12 @@ def turn(rotation, p):
 
 def turn_each(rotation, p):
     """R p for rotation matrices (3, 3, N) and points p (3, N) or (3, rows, N)."""
-    return np.stack(
-        [rotation[i, 0] * p[0] + rotation[i, 1] * p[1] + rotation[i, 2] * p[2] for i in range(3)]
-    )
+    out = np.empty(np.broadcast_shapes(p.shape, rotation.shape[2:]))
+    for i in range(3):
+        np.multiply(rotation[i, 0], p[0], out=out[i])
+        out[i] += rotation[i, 1] * p[1]
+        out[i] += rotation[i, 2] * p[2]
+    return out
 
 
 def tilt(axis, normals, angles):

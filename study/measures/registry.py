@@ -24,7 +24,7 @@ class MeasureInfo:
     solid_mean: bool = False
 
     def scope_on(self, solid: bool) -> str:
-        """"side" or "axle", on a solid axle or on independent wheels."""
+        """ "side" or "axle", on a solid axle or on independent wheels."""
         return "axle" if solid and self.solid_mean else self.scope
 
     def value(self, view, axle):
@@ -43,9 +43,7 @@ def measure(key, unit, *, meaning, sign="", scope="side", rates=(), needs=(), so
     """Register a measure function of a wheel's `View` (scope side) or of an `AxleView` (scope axle), giving (N,)."""
 
     def register(function):
-        KEYS[key] = MeasureInfo(
-            key, unit, scope, sign, meaning, function, tuple(rates), tuple(needs), solid_mean
-        )
+        KEYS[key] = MeasureInfo(key, unit, scope, sign, meaning, function, tuple(rates), tuple(needs), solid_mean)
         return function
 
     return register

@@ -176,5 +176,11 @@ def result_tables(*, sources=5, measures=2, stages=("before", "after")):
         {"stage": "after", "measure_no": 0, "measure": "measure 0", "of": "track_mm", "unit": "mm"}
         | {"position": {"bump_mm": 5.0}, "mean": 1.5, "limit_high": float("inf"), "builds": 640}
     ]
-    study = {"builds": 640, "withheld": False, "notes": ["left as drawn"], "stages": list(stages), "seconds": 1.5}
+    study = {
+        "builds": 640,
+        "withheld": False,
+        "notes": ["left as drawn"],
+        "stages": list(stages),
+        "seconds": 1.5,
+    }
     return {"study": [study], "ranking": ranking, "stats": stats}

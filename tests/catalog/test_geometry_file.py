@@ -90,7 +90,9 @@ def test_springs_arms_vehicle_and_datums():
     text = WISHBONES.replace('note = "invented"', 'spring_on = "lower_arm"').replace(
         "[points]", "[points]\nspring_inner = [0, 300, 500]\nspring_outer = [0, 450, 140]"
     )
-    text += '[arms.lower_arm]\nbuild = "legs"\nlocated_by = "rear"\n[vehicle]\naxle = "rear"\nwheelbase = 2450\n'
+    text += (
+        '[arms.lower_arm]\nbuild = "legs"\nlocated_by = "rear"\n[vehicle]\naxle = "rear"\nwheelbase = 2450\n'
+    )
     text += '[datums]\nall = "floor plane, centre plane, rear bulkhead"\n'
     read = geometry(text)
     assert read.spring_on == "lower_arm" and read.right.points["spring_outer"] == (0.0, -450.0, 140.0)
@@ -136,7 +138,10 @@ def test_axes_units_and_side_of_the_file_do_not_change_the_car(axes, units, side
 
 def test_spacing_and_comments_are_not_content_but_numbers_are():
     plain = geometry()
-    assert geometry("# checked\n" + WISHBONES.replace("560, 290", "560.0,   290")).content_hash == plain.content_hash
+    assert (
+        geometry("# checked\n" + WISHBONES.replace("560, 290", "560.0,   290")).content_hash
+        == plain.content_hash
+    )
     assert geometry(WISHBONES.replace("560, 290", "560, 290.001")).content_hash != plain.content_hash
     assert geometry(WISHBONES.replace("= [0, 640", "= [-0.0, 640")).content_hash == plain.content_hash
 

@@ -1,3 +1,4 @@
+# ruff: noqa: E501
 """Geometry files that are refused: each error names file, key, value, rule and remedy."""
 
 import pytest
@@ -125,7 +126,9 @@ def test_left_handed_axes_are_refused(axes):
         geometry(changed("x-forward y-left z-up", axes))
 
 
-@pytest.mark.parametrize("axes", ["x-forward y-rear z-up", "x-forward y-left", "forward left up", "x-ahead y-left z-up"])
+@pytest.mark.parametrize(
+    "axes", ["x-forward y-rear z-up", "x-forward y-left", "forward left up", "x-ahead y-left z-up"]
+)
 def test_axes_that_name_no_system_are_refused(axes):
     with pytest.raises(GeometryFileError, match="axes = "):
         geometry(changed("x-forward y-left z-up", axes))

@@ -1,51 +1,86 @@
-"""An invented double-wishbone study in the form of the result tables: 16 sources, before and after alignment."""
+"""An invented double-wishbone study in the form of the result tables: 16 sources, before and after
+alignment."""
 
 import math
 
 import numpy as np
 
-POINTS = {
-    "upper_front_pivot": (121.0, 322.0, 281.0), "upper_rear_pivot": (-118.0, 331.0, 264.0),
-    "upper_ball_joint": (-14.0, 571.0, 302.0), "lower_front_pivot": (148.0, 262.0, 131.0),
-    "lower_rear_pivot": (-152.0, 268.0, 124.0), "lower_ball_joint": (6.0, 612.0, 118.0),
-    "tie_rod_inner": (74.0, 288.0, 158.0), "tie_rod_outer": (82.0, 596.0, 149.0),
-}
-LINES = [
-    ("upper_front_pivot", "upper_ball_joint", "upper_arm"), ("upper_rear_pivot", "upper_ball_joint", "upper_arm"),
-    ("lower_front_pivot", "lower_ball_joint", "lower_arm"), ("lower_rear_pivot", "lower_ball_joint", "lower_arm"),
-    ("tie_rod_inner", "tie_rod_outer", "tie_rod"), ("upper_ball_joint", "lower_ball_joint", "upright"),
-]
 SOURCES = {
-    "chassis.upper_front_pivot": "xyz", "chassis.upper_rear_pivot": "xyz", "chassis.lower_front_pivot": "xyz",
-    "chassis.lower_rear_pivot": "xyz", "rack.tie_rod_inner": "xyz", "upright.upper_ball_joint": "xyz",
-    "upright.lower_ball_joint": "xyz", "upright.tie_rod_outer": "xyz", "upright.wheel_centre": "xyz",
-    "upright.hub_axis": "tilt", "upper_arm.upper_ball_joint": "xyz", "lower_arm.lower_ball_joint": "xyz",
-    "tie_rod.length": "length", "alignment.ride_height": "length", "alignment.toe": "tilt", "alignment.camber": "tilt",
+    "chassis.upper_front_pivot": "xyz",
+    "chassis.upper_rear_pivot": "xyz",
+    "chassis.lower_front_pivot": "xyz",
+    "chassis.lower_rear_pivot": "xyz",
+    "rack.tie_rod_inner": "xyz",
+    "upright.upper_ball_joint": "xyz",
+    "upright.lower_ball_joint": "xyz",
+    "upright.tie_rod_outer": "xyz",
+    "upright.wheel_centre": "xyz",
+    "upright.hub_axis": "tilt",
+    "upper_arm.upper_ball_joint": "xyz",
+    "lower_arm.lower_ball_joint": "xyz",
+    "tie_rod.length": "length",
+    "alignment.ride_height": "length",
+    "alignment.toe": "tilt",
+    "alignment.camber": "tilt",
 }
-# measure, of, unit, nominal, sd before, sd after, limits, share pattern: the three leading sources and their shares
+# measure, of, unit, nominal, sd before, sd after, limits, share pattern: the three leading sources and their
+# shares
 MEASURES = [
-    ("roll_centre_height_mm", "roll_centre_height_mm", "mm", 24.1, 3.9, 3.4, (18.0, 30.0),
-     {"chassis.lower_front_pivot": 0.34, "chassis.lower_rear_pivot": 0.22, "chassis.upper_front_pivot": 0.205}),
-    ("bump steer over 30 mm", "toe_deg", "deg", 0.041, 0.081, 0.074, (0.0, 0.25),
-     {"rack.tie_rod_inner": 0.58, "upright.tie_rod_outer": 0.24, "chassis.upper_rear_pivot": 0.06}),
-    ("camber_deg at bump 25, roll 1.5", "camber_deg", "deg", -1.37, 0.29, 0.052, None,
-     {"alignment.camber": 0.41, "chassis.upper_front_pivot": 0.19, "chassis.upper_rear_pivot": 0.18}),
-    ("cross_camber_deg", "cross_camber_deg", "deg", 0.0, 0.41, 0.071, (-0.15, 0.15),
-     {"alignment.camber": 0.93, "alignment.toe": 0.03, "upright.hub_axis": 0.02}),
+    (
+        "roll_centre_height_mm",
+        "roll_centre_height_mm",
+        "mm",
+        24.1,
+        3.9,
+        3.4,
+        (18.0, 30.0),
+        {
+            "chassis.lower_front_pivot": 0.34,
+            "chassis.lower_rear_pivot": 0.22,
+            "chassis.upper_front_pivot": 0.205,
+        },
+    ),
+    (
+        "bump steer over 30 mm",
+        "toe_deg",
+        "deg",
+        0.041,
+        0.081,
+        0.074,
+        (0.0, 0.25),
+        {"rack.tie_rod_inner": 0.58, "upright.tie_rod_outer": 0.24, "chassis.upper_rear_pivot": 0.06},
+    ),
+    (
+        "camber_deg at bump 25, roll 1.5",
+        "camber_deg",
+        "deg",
+        -1.37,
+        0.29,
+        0.052,
+        None,
+        {"alignment.camber": 0.41, "chassis.upper_front_pivot": 0.19, "chassis.upper_rear_pivot": 0.18},
+    ),
+    (
+        "cross_camber_deg",
+        "cross_camber_deg",
+        "deg",
+        0.0,
+        0.41,
+        0.071,
+        (-0.15, 0.15),
+        {"alignment.camber": 0.93, "alignment.toe": 0.03, "upright.hub_axis": 0.02},
+    ),
 ]
-MORE = ["caster_deg", "scrub_radius_mm", "trail_mm", "anti_dive_pct", "ackermann_pct", "kingpin_deg",
-        "track_mm", "steer_lift_mm"]
-
-
-def geometry() -> dict:
-    right = {name: (x, -y, z) for name, (x, y, z) in POINTS.items()}
-    camber = math.radians(-1.0)
-    axis = (0.0, math.cos(camber), -math.sin(camber))
-    wheel = {"centre": (0.0, 652.0, 262.0), "axis": axis, "radius_mm": 262.0}
-    other = {"centre": (0.0, -652.0, 262.0), "axis": (0.0, -axis[1], axis[2]), "radius_mm": 262.0}
-    ground = 262.0 - 262.0 * math.cos(camber)
-    return {"name": "invented-front@2", "linkage": "double-wishbone", "left": POINTS, "right": right, "lines": LINES,
-            "wheel": {"left": wheel, "right": other}, "ground_mm": ground}
+MORE = [
+    "caster_deg",
+    "scrub_radius_mm",
+    "trail_mm",
+    "anti_dive_pct",
+    "ackermann_pct",
+    "kingpin_deg",
+    "track_mm",
+    "steer_lift_mm",
+]
 
 
 def _measures(count: int) -> list[tuple]:
@@ -54,7 +89,18 @@ def _measures(count: int) -> list[tuple]:
     for index, key in enumerate(MORE):
         unit = key.rsplit("_", 1)[1]
         share = {names[(3 * index + step) % 13]: value for step, value in enumerate((0.45, 0.2, 0.12))}
-        rows.append((key, key, unit, 10.0 + index, 0.9, 0.6, (8.0 + index, 12.0 + index) if index % 2 else None, share))
+        rows.append(
+            (
+                key,
+                key,
+                unit,
+                10.0 + index,
+                0.9,
+                0.6,
+                (8.0 + index, 12.0 + index) if index % 2 else None,
+                share,
+            )
+        )
     return rows[:count]
 
 
@@ -63,8 +109,11 @@ def _shares(pattern: dict, rng: np.random.Generator, *, before: bool) -> dict[st
     small = rng.dirichlet(np.full(len(rest), 0.4)) * max(0.0, 1.0 - sum(pattern.values()))
     shares = pattern | dict(zip(rest, small, strict=True))
     if before:
-        shares = {name: value * rng.uniform(0.4, 1.5) for name, value in shares.items()
-                  if name not in ("alignment.toe", "alignment.camber")}
+        shares = {
+            name: value * rng.uniform(0.4, 1.5)
+            for name, value in shares.items()
+            if name not in ("alignment.toe", "alignment.camber")
+        }
         total = sum(shares.values())
         shares = {name: value / total for name, value in shares.items()}
     return dict(sorted(shares.items(), key=lambda item: -item[1]))
@@ -77,20 +126,42 @@ def _ranking(number: int, measure: tuple, stage: str, rng: np.random.Generator) 
         kind = SOURCES[source]
         axes = {"xyz": ["x", "y", "z"], "length": ["length"], "tilt": ["tilt_1", "tilt_2"]}[kind]
         scale = measure[5] * math.sqrt(share) / 0.4
-        effect = [float(scale * w) for w in rng.normal(size=len(axes)) * [0.2, 0.4, 1.0][-len(axes):]]
+        effect = [float(scale * w) for w in rng.normal(size=len(axes)) * [0.2, 0.4, 1.0][-len(axes) :]]
         half = 0.012 + 0.05 * share
         signed = measure[0] != "bump steer over 30 mm"
-        rows.append({
-            "stage": stage, "measure_no": number, "measure": measure[0], "of": measure[1], "unit": measure[2],
-            "source": source, "rank": rank, "st": share, "st_low": share - half, "st_high": share + half,
-            "s1": share * 0.97, "s1_low": share * 0.97 - half, "s1_high": share * 0.97 + half,
-            "linear_share": share * (0.55 if source == "upright.tie_rod_outer" else 1.01),
-            "mu_star": None, "mu_star_low": None, "mu_star_high": None,
-            "effect": effect if signed else None, "effect_axes": axes,
-            "effect_unit": measure[2] + ("/deg" if kind == "tilt" else "/mm"),
-            "effect_per_mm": math.hypot(*effect) if signed else None, "tied": rank > 1 and rank % 3 == 0,
-            "verdict": None if measure[6] is None else "hold" if share > 0.15 else "watch" if share > 0.05 else "open",
-        })
+        rows.append(
+            {
+                "stage": stage,
+                "measure_no": number,
+                "measure": measure[0],
+                "of": measure[1],
+                "unit": measure[2],
+                "source": source,
+                "rank": rank,
+                "st": share,
+                "st_low": share - half,
+                "st_high": share + half,
+                "s1": share * 0.97,
+                "s1_low": share * 0.97 - half,
+                "s1_high": share * 0.97 + half,
+                "linear_share": share * (0.55 if source == "upright.tie_rod_outer" else 1.01),
+                "mu_star": None,
+                "mu_star_low": None,
+                "mu_star_high": None,
+                "effect": effect if signed else None,
+                "effect_axes": axes,
+                "effect_unit": measure[2] + ("/deg" if kind == "tilt" else "/mm"),
+                "effect_per_mm": math.hypot(*effect) if signed else None,
+                "tied": rank > 1 and rank % 3 == 0,
+                "verdict": None
+                if measure[6] is None
+                else "hold"
+                if share > 0.15
+                else "watch"
+                if share > 0.05
+                else "open",
+            }
+        )
     return rows
 
 
@@ -98,18 +169,42 @@ def _stats(number: int, measure: tuple, stage: str) -> dict:
     name, of, unit, nominal, before, after, limits, _ = measure
     sd = before if stage == "before" else after
     mean = nominal + 0.1 * sd
-    z = {"q005": -2.576, "q025": -1.96, "q05": -1.645, "q25": -0.674, "q50": 0, "q75": 0.674, "q95": 1.645,
-         "q975": 1.96, "q995": 2.576}
+    z = {
+        "q005": -2.576,
+        "q025": -1.96,
+        "q05": -1.645,
+        "q25": -0.674,
+        "q50": 0,
+        "q75": 0.674,
+        "q95": 1.645,
+        "q975": 1.96,
+        "q995": 2.576,
+    }
     low, high = limits or (-math.inf, math.inf)
     good = 0.5 * (math.erf((high - mean) / sd / math.sqrt(2)) - math.erf((low - mean) / sd / math.sqrt(2)))
     return {
-        "stage": stage, "measure_no": number, "measure": name, "of": of, "unit": unit,
-        "side": "axle" if of.startswith(("roll", "cross", "track")) else "left", "position": None,
-        "nominal": nominal, "mean": mean, "sd": sd, "low": mean - 3.6 * sd, "high": mean + 3.6 * sd,
-        **{key: mean + value * sd for key, value in z.items()}, "limit_low": low, "limit_high": high,
-        "good_share": good if limits else None, "good_low": good - 0.004 if limits else None,
-        "good_high": min(good + 0.004, 1.0) if limits else None, "builds": 18432, "unassembled": 0,
-        "rss": 2.8 * sd, "worst_case": 5.1 * sd,
+        "stage": stage,
+        "measure_no": number,
+        "measure": name,
+        "of": of,
+        "unit": unit,
+        "side": "axle" if of.startswith(("roll", "cross", "track")) else "left",
+        "position": None,
+        "nominal": nominal,
+        "mean": mean,
+        "sd": sd,
+        "low": mean - 3.6 * sd,
+        "high": mean + 3.6 * sd,
+        **{key: mean + value * sd for key, value in z.items()},
+        "limit_low": low,
+        "limit_high": high,
+        "good_share": good if limits else None,
+        "good_low": good - 0.004 if limits else None,
+        "good_high": min(good + 0.004, 1.0) if limits else None,
+        "builds": 18432,
+        "unassembled": 0,
+        "rss": 2.8 * sd,
+        "worst_case": 5.1 * sd,
     }
 
 
@@ -119,51 +214,116 @@ def _histogram(number: int, measure: tuple, stage: str, rng: np.random.Generator
     if measure[0].startswith("bump steer"):
         values = np.abs(values)
     counts, edges = np.histogram(values, bins=36)
-    return [{"stage": stage, "measure_no": number, "left": float(a), "right": float(b), "count": int(c)}
-            for a, b, c in zip(edges, edges[1:], counts, strict=False)]
+    return [
+        {"stage": stage, "measure_no": number, "left": float(a), "right": float(b), "count": int(c)}
+        for a, b, c in zip(edges, edges[1:], counts, strict=False)
+    ]
 
 
 def _curves() -> list[dict]:
     rows = []
-    shapes = {("bump", "toe_deg"): (30, lambda x: 0.0006 * x + 0.00002 * x * x, lambda x: 0.02 + 0.0026 * abs(x), "deg"),
-              ("bump", "camber_deg"): (30, lambda x: -1 - 0.021 * x, lambda x: 0.05 + 0.0005 * abs(x), "deg"),
-              ("roll", "camber_deg"): (3, lambda x: -1 + 0.62 * x, lambda x: 0.05 + 0.002 * abs(x), "deg"),
-              ("rack", "ackermann_pct"): (30, lambda x: 44 + 0.2 * abs(x) if x else None, lambda x: 2.0, "pct")}
+    shapes = {
+        ("bump", "toe_deg"): (
+            30,
+            lambda x: 0.0006 * x + 0.00002 * x * x,
+            lambda x: 0.02 + 0.0026 * abs(x),
+            "deg",
+        ),
+        ("bump", "camber_deg"): (30, lambda x: -1 - 0.021 * x, lambda x: 0.05 + 0.0005 * abs(x), "deg"),
+        ("roll", "camber_deg"): (3, lambda x: -1 + 0.62 * x, lambda x: 0.05 + 0.002 * abs(x), "deg"),
+        ("rack", "ackermann_pct"): (30, lambda x: 44 + 0.2 * abs(x) if x else None, lambda x: 2.0, "pct"),
+    }
     for (axis, key), (reach, nominal, band, unit) in shapes.items():
         for x in np.linspace(-reach, reach, 13):
             for side in ("axle",) if key.startswith("ack") else ("left", "right"):
                 mid, half = nominal(float(x)), band(float(x))
-                spread = dict.fromkeys(("q05", "q25", "q50", "q75", "q95")) if mid is None else {
-                    "q05": mid - half, "q25": mid - 0.41 * half, "q50": mid, "q75": mid + 0.41 * half, "q95": mid + half}
-                rows.append({"stage": "after", "axis": axis, "x": float(x), "key": key, "unit": unit, "side": side,
-                             "nominal": mid, **spread})
+                spread = (
+                    dict.fromkeys(("q05", "q25", "q50", "q75", "q95"))
+                    if mid is None
+                    else {
+                        "q05": mid - half,
+                        "q25": mid - 0.41 * half,
+                        "q50": mid,
+                        "q75": mid + 0.41 * half,
+                        "q95": mid + half,
+                    }
+                )
+                rows.append(
+                    {
+                        "stage": "after",
+                        "axis": axis,
+                        "x": float(x),
+                        "key": key,
+                        "unit": unit,
+                        "side": side,
+                        "nominal": mid,
+                        **spread,
+                    }
+                )
     return rows
 
 
 def _demand() -> list[dict]:
     rows = []
     for name, by, sd, out in (("toe", "tie_rod", 0.62, 0.0), ("camber", "upper_arm", 1.1, 0.0041)):
-        q = {"q005": -2.576, "q05": -1.645, "q25": -0.674, "q50": 0.0, "q75": 0.674, "q95": 1.645, "q995": 2.576}
-        rows.append({"adjuster": name, "by": by, "unit": "mm", **{k: z * sd for k, z in q.items()},
-                     "low": -3.7 * sd, "high": 3.6 * sd, "ran_out_share": out})
+        q = {
+            "q005": -2.576,
+            "q05": -1.645,
+            "q25": -0.674,
+            "q50": 0.0,
+            "q75": 0.674,
+            "q95": 1.645,
+            "q995": 2.576,
+        }
+        rows.append(
+            {
+                "adjuster": name,
+                "by": by,
+                "unit": "mm",
+                **{k: z * sd for k, z in q.items()},
+                "low": -3.7 * sd,
+                "high": 3.6 * sd,
+                "ran_out_share": out,
+            }
+        )
     return rows
 
 
 def _worst() -> list[dict]:
     rows = []
     for number, direction, value in ((0, "low", 11.9), (0, "high", 37.2), (1, "high", 0.41)):
-        rows += [{"stage": "after", "measure_no": number, "direction": direction, "value": value, "source": source,
-                  "axis": axis, "error": error}
-                 for source, axis, error in (("chassis.lower_front_pivot", "z", -1.0), ("rack.tie_rod_inner", "z", 1.0),
-                                             ("tie_rod.length", "length", 0.2), ("upright.hub_axis", "tilt_1", 0.05))]
+        rows += [
+            {
+                "stage": "after",
+                "measure_no": number,
+                "direction": direction,
+                "value": value,
+                "source": source,
+                "axis": axis,
+                "error": error,
+            }
+            for source, axis, error in (
+                ("chassis.lower_front_pivot", "z", -1.0),
+                ("rack.tie_rod_inner", "z", 1.0),
+                ("tie_rod.length", "length", 0.2),
+                ("upright.hub_axis", "tilt_1", 0.05),
+            )
+        ]
     return rows
 
 
 def tables(count: int = 4, *, seed: int = 5) -> dict[str, list[dict]]:
     """Result tables with `count` measures (1 to 12)."""
     rng = np.random.default_rng(seed)
-    result: dict[str, list[dict]] = {"ranking": [], "stats": [], "histogram": [], "curves": _curves(),
-                                     "demand": _demand(), "worst": _worst(), "correlations": []}
+    result: dict[str, list[dict]] = {
+        "ranking": [],
+        "stats": [],
+        "histogram": [],
+        "curves": _curves(),
+        "demand": _demand(),
+        "worst": _worst(),
+        "correlations": [],
+    }
     chosen = _measures(count)
     for number, measure in enumerate(chosen):
         for stage in ("before", "after"):
@@ -171,31 +331,13 @@ def tables(count: int = 4, *, seed: int = 5) -> dict[str, list[dict]]:
             result["stats"].append(_stats(number, measure, stage))
             result["histogram"] += _histogram(number, measure, stage, rng)
     for index, first in enumerate(chosen):
-        result["correlations"] += [{"stage": "after", "measure_a": first[0], "measure_b": second[0],
-                                    "r": float(rng.uniform(-0.9, 0.9))} for second in chosen[index + 1:]]
+        result["correlations"] += [
+            {
+                "stage": "after",
+                "measure_a": first[0],
+                "measure_b": second[0],
+                "r": float(rng.uniform(-0.9, 0.9)),
+            }
+            for second in chosen[index + 1 :]
+        ]
     return result
-
-
-def study() -> dict:
-    return {
-        "id": 12, "title": "Front brackets, release B", "geometry": "invented-front@2", "method": "sobol", "size": 1024,
-        "seed": 0, "sides": "independent", "state": "done", "builds": 36864, "dropped_blocks": 3, "withheld": False,
-        "unassembled": 3, "version": "0.1.0", "text": 'title = "Front brackets, release B"\n[errors]\n"chassis.*" = 1',
-        "perfect": ["upright.wheel_centre"], "notes": ["Three blocks were dropped: a build could not be assembled."],
-        "seconds": 4.2, "stages": ["before", "after"], "wanted_share": 0.95,
-    }
-
-
-def tolerances() -> list[dict]:
-    zones = {"xyz": "± 1.0 mm in x, y, z", "length": "± 0.2 mm", "tilt": "cone of 0.05°"}
-    return [{"source": source, "zone_text": zones[kind], "distribution_text": "uniform",
-             "process": "welded, jig" if source.startswith("chassis") else None}
-            for source, kind in SOURCES.items() if not source.startswith("alignment")]
-
-
-def alignment() -> list[dict]:
-    return [
-        {"adjuster": "ride height", "by": None, "within_text": "± 2 mm", "step_text": None, "range_text": None},
-        {"adjuster": "toe", "by": "tie_rod", "within_text": "± 0.02°", "step_text": None, "range_text": None},
-        {"adjuster": "camber", "by": "upper_arm", "within_text": "± 0.05°", "step_text": "0.5 mm", "range_text": "± 4 mm"},
-    ]

@@ -1,4 +1,4 @@
-"""Every measure against its definition, taken by differences of independently solved poses; signs on plain cases."""
+"""Every measure against its definition, taken by differences of independent poses; signs on plain cases."""
 
 import pytest
 from hypothesis import assume, given, settings
@@ -21,9 +21,10 @@ def program(spec, **position):
 
 
 def positions(linkage):
-    travel = st.floats(3, 25).flatmap(lambda d: st.sampled_from([d, -d]))
-    rack = st.one_of(st.just(0.0), travel) if linkage in STEERS else st.just(0.0)
-    return st.fixed_dictionaries({"bump_mm": st.floats(-40, 50), "roll_deg": st.floats(-3, 3), "rack_mm": rack})
+    either = st.floats(3, 25).flatmap(lambda d: st.sampled_from([d, -d]))
+    rack = st.one_of(st.just(0.0), either) if linkage in STEERS else st.just(0.0)
+    travel = {"bump_mm": st.floats(-40, 50), "roll_deg": st.floats(-3, 3), "rack_mm": rack}
+    return st.fixed_dictionaries(travel)
 
 
 @pytest.mark.parametrize("linkage", LINKAGES)
@@ -90,9 +91,9 @@ def test_steering_axis_signs():
     for side in ("left", "right"):
         assert found[side]["caster_deg"] == pytest.approx(7.5946, abs=1e-3)  # atan 40/300, top rearward
         assert found[side]["kingpin_deg"] == pytest.approx(11.3099, abs=1e-3)  # atan 60/300, top inboard
-        assert found[side]["trail_mm"] == pytest.approx(30.0, abs=1e-6)  # axis meets the ground at x 30, y 730
+        assert found[side]["trail_mm"] == pytest.approx(30.0, abs=1e-6)  # at x 30, y 730 on the ground
         assert found[side]["scrub_radius_mm"] == pytest.approx(15.0, abs=1e-6)
-        assert found[side]["kingpin_offset_mm"] == pytest.approx(745 - 671.0, abs=1e-6)  # axis at y 671, z 295
+        assert found[side]["kingpin_offset_mm"] == pytest.approx(745 - 671.0, abs=1e-6)  # y 671 at z 295
 
 
 def test_rack_to_the_left_behind_the_axle_toes_the_left_wheel_in():
