@@ -46,6 +46,11 @@ def bench_of(corner: Corner, study) -> Bench:
     """The adjusters that a study names, on this corner. Raises AlignmentError."""
     chosen = [adjuster for adjuster in study.alignment or () if adjuster.by is not None]
     known = adjusters_of(corner)
+    if chosen and corner.solid:
+        raise AlignmentError(
+            f"alignment.{chosen[0].target}: a solid axle's wheels stand as the axle was made and are not set; "
+            "leave it out ([alignment] may hold ride_height)"
+        )
     for adjuster in chosen:
         if adjuster.by not in known:
             raise AlignmentError(

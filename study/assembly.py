@@ -6,7 +6,7 @@ of the body (upright, axle, trailing arm) relative to the body's origin, the nom
 middle of both). Lengths are the parts' own, taken once from the nominal: nothing derives them from a built point.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -58,7 +58,7 @@ class Corner:
     steer_link: str | None = None
     rack_part: str = "chassis"
     spring_on: str = "upright"
-    spring: tuple[np.ndarray, np.ndarray] | None = None
+    springs: dict[str, tuple[np.ndarray, np.ndarray]] = field(default_factory=dict)
 
     @property
     def solid(self) -> bool:
@@ -88,9 +88,7 @@ def corner_of(geometry, hand: str) -> Corner:
     origin = np.mean(centres, axis=0)
     steer_link = "tie_rod" if "tie_rod_inner" in points else geometry.steer_link
     rack_part = "rack" if geometry.vehicle.steered and steer_link else "chassis"
-    spring = None
-    if "spring_inner" in points:
-        spring = (points.pop("spring_inner"), points.pop("spring_outer"))
+    springs = _springs(geometry, points, flip)
     made = _Maker(points, origin, geometry, rack_part, steer_link)
     made.wheels(wheels, centres)
     FEATURES[geometry.linkage](made)
@@ -98,8 +96,19 @@ def corner_of(geometry, hand: str) -> Corner:
     return Corner(
         geometry.linkage, made.features, origin, tuple(w.loaded_radius_mm for w in wheels), geometry.ground_mm(),
         build, {name: arm.located_by for name, arm in geometry.arms.items()}, made.bores,
-        tuple(geometry.links), steer_link, rack_part, geometry.spring_on, spring,
+        tuple(geometry.links), steer_link, rack_part, geometry.spring_on, springs,
     )  # fmt: skip
+
+
+def _springs(geometry, points, flip):
+    """(inner, outer) of the springs by wheel suffix, taken out of the points; a solid axle has one a side."""
+    if "spring_inner" not in points:
+        return {}
+    own = (points.pop("spring_inner"), points.pop("spring_outer"))
+    if geometry.linkage != "solid-axle":
+        return {"": own}
+    right = geometry.right.points
+    return {"_left": own, "_right": tuple(np.asarray(right[f"spring_{end}"], float) for end in ("inner", "outer"))}
 
 
 def spin_axis(*, camber_deg, toe_deg):

@@ -145,10 +145,11 @@ class _Collector:
             self.effects[hand].append(Effect(target, source.of_hand(hand), mirror))
 
     def add_band(self, adjuster):
-        columns = self._columns(adjuster.band, len(self.hands))
+        hands = HANDS if self.left.solid else self.hands
+        columns = self._columns(adjuster.band, len(hands))
         unit = "mm" if adjuster.target == "ride_height" else "deg"
         source = Source(
-            f"alignment.{adjuster.target}", "length", unit, (adjuster.target,), adjuster.band, columns, self.hands
+            f"alignment.{adjuster.target}", "length", unit, (adjuster.target,), adjuster.band, columns, hands
         )
         self.sources.append(source)
         for hand in HANDS:

@@ -11,37 +11,37 @@ from study.measures.view import screw_axis
 
 @dataclass(frozen=True)
 class Parts:
-    """Built parts of one corner. Arrays (3, N) in the car's axes unless they are body features (`body`, untouched by pose).
+    """Built parts of one corner: body features by short name (3, N) in the body's frame, chassis points in the car's axes.
 
+    Of a solid axle the names that belong to one wheel end in _left and _right; a View holds those of its own wheel.
     axis_kind: "joints" (two body points), "strut" (body point to chassis point), "screw", or None.
     lock_kind: "spring" (constant spring length on the body) or "height" of the body point `lock_point`.
     """
 
     body: dict
+    chassis: dict
     axis_kind: str | None
     steers: bool
-    strut_top: np.ndarray | None
     lock_kind: str
-    spring_inner: np.ndarray | None
     arm_spring: tuple | None
     fits: dict
 
     @classmethod
     def of(cls, corner, built, arm_bores, fits):
         kind = {"double-wishbone": "joints", "strut": "strut", "five-link": "screw"}.get(corner.linkage)
-        body = _body_features(corner, built)
-        on_arm = corner.spring is not None and corner.spring_on == "lower_arm"
-        on_body = corner.spring is not None and not on_arm
-        arm_spring = None
-        if on_arm:
-            own = np.stack([corner.features[f"chassis.lower_{end}_pivot"].nominal for end in ("front", "rear")], axis=1)
-            joint = corner.features["upright.lower_ball_joint"].nominal + corner.origin
-            local = _in_hinge_frame(own[:, :1], own[:, 1:], joint[:, None], corner.spring[1][:, None])
-            arm_spring = (arm_bores["lower_arm"], local)
+        on_arm = bool(corner.springs) and corner.spring_on == "lower_arm"
+        chassis = {f"spring_inner{w}": spring[0][:, None] for w, spring in corner.springs.items()}
+        if "chassis.strut_top" in built:
+            chassis["strut_top"] = built["chassis.strut_top"]
         return cls(
-            body, kind, corner.has_rack, built.get("chassis.strut_top"), "spring" if on_body else "height",
-            None if corner.spring is None else corner.spring[0][:, None], arm_spring, fits,
-        )  # fmt: skip
+            _body_features(corner, built),
+            chassis,
+            kind,
+            corner.has_rack,
+            "spring" if corner.springs and not on_arm else "height",
+            _arm_spring(corner, arm_bores) if on_arm else None,
+            fits,
+        )
 
     def fit(self, view, arm):
         """Spacing of the built chassis pivots minus that of the bores (N,) mm; undefined for legs."""
@@ -54,7 +54,7 @@ class Parts:
         if self.axis_kind == "screw":
             return screw_axis(view.locked_twist, view.pose.t) if self.steers else None
         low = view.body_point("lower_ball_joint")
-        high = self.strut_top if self.axis_kind == "strut" else view.body_point("upper_ball_joint")
+        high = view.anchors["strut_top"] if self.axis_kind == "strut" else view.body_point("upper_ball_joint")
         return low, high - low
 
     def lock_rate(self, view):
@@ -67,11 +67,11 @@ class Parts:
     def _spring_rate_of(self, view, twist):
         outer = view.body_point("spring_outer")
         moved = twist[:3] + cross(twist[3:], outer - view.pose.t)
-        return dot(unit(outer - self.spring_inner), moved)
+        return dot(unit(outer - view.anchors["spring_inner"]), moved)
 
     def spring_rate(self, view):
         """d(spring length) per mm of road rise (N,), or None without a spring."""
-        if self.spring_inner is None:
+        if "spring_inner" not in view.anchors:
             return None
         bump = view.twists["bump"]
         if self.arm_spring is None:
@@ -82,7 +82,7 @@ class Parts:
         moved = bump[:3] + cross(bump[3:], joint - view.pose.t)
         turn = axes[0] * (dot(axes[2], moved) / radius)
         lever = axes[0] * local[0] + axes[1] * local[1] + axes[2] * local[2]
-        return dot(unit(front + lever - self.spring_inner), cross(turn, lever))
+        return dot(unit(front + lever - view.anchors["spring_inner"]), cross(turn, lever))
 
     def locked(self, rows: Rows, view) -> tuple[Rows, Road]:
         """Rows (unturned) and "road" that hold the suspension where `view` has it: the lock in the tyre row's place."""
@@ -93,8 +93,8 @@ class Parts:
             held = rows._replace(wheel_centre=point, wheel_radius=np.zeros((1, 1)))
             return held, road._replace(height=view.body_point("lock_point")[2][None])
         outer = np.broadcast_to(self.body["spring_outer"], (3, n))[:, None]
-        inner = np.broadcast_to(self.spring_inner, (3, n))[:, None]
-        length = norm(view.body_point("spring_outer") - self.spring_inner)[None]
+        inner = np.broadcast_to(self.chassis["spring_inner"], (3, n))[:, None]
+        length = norm(view.body_point("spring_outer") - self.chassis["spring_inner"])[None]
         held = rows._replace(
             link_body=np.concatenate((rows.link_body, outer), axis=1),
             link_chassis=np.concatenate((rows.link_chassis, inner), axis=1),
@@ -115,11 +115,19 @@ def _body_features(corner, built):
     for name in ("upper_ball_joint", "lower_ball_joint"):
         if f"{part}.{name}" in built:
             out[name] = built[f"{part}.{name}"]
-    if corner.spring is not None and corner.spring_on != "lower_arm":
-        out["spring_outer"] = (corner.spring[1] - corner.origin)[:, None]
+    if corner.spring_on != "lower_arm":
+        out |= {f"spring_outer{w}": (spring[1] - corner.origin)[:, None] for w, spring in corner.springs.items()}
     centre = "wheel_centre_left" if corner.solid else "wheel_centre"
     out["lock_point"] = out.get("lower_ball_joint", out[centre])
     return out
+
+
+def _arm_spring(corner, arm_bores):
+    """(built hinge ends of the lower arm, the spring's end in the arm's own hinge frame)."""
+    own = np.stack([corner.features[f"chassis.lower_{end}_pivot"].nominal for end in ("front", "rear")], axis=1)
+    joint = corner.features["upright.lower_ball_joint"].nominal + corner.origin
+    local = _in_hinge_frame(own[:, :1], own[:, 1:], joint[:, None], corner.springs[""][1][:, None])
+    return arm_bores["lower_arm"], local
 
 
 def _hinge_axes(front, rear, joint):

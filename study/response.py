@@ -85,7 +85,7 @@ class Response:
     def _hand(self, hand, corner):
         study = self.study if self.stage == "after" else _unaligned(self.study)
         return Hand(
-            corner, effects=self.model.effects[hand], bench=bench_of(corner, study), bands=self.model.bands[hand],
+            hand, corner, effects=self.model.effects[hand], bench=bench_of(corner, study), bands=self.model.bands,
             scalars=self.model.scalars, vehicle=self.geometry.vehicle,
         )  # fmt: skip
 
@@ -171,7 +171,7 @@ class Response:
             none = np.zeros((0, n))
             return hand.block(errors, none), Setting(none, none.astype(bool), np.zeros(n, int), np.zeros(n))
         nominal, gains, slope = self.starts[name]
-        left = np.stack([errors[hand.bands[target]] for target in hand.bench.targets])
+        left = np.stack([errors[hand.bands[name][target]] for target in hand.bench.targets])
         start = np.linalg.solve(gains, left - slope @ errors)
         setting = align(
             hand.bench, lambda settings: hand.angles(hand.block(errors, settings))[0],
@@ -199,11 +199,10 @@ class _Shelf:
         return view
 
     def _view(self, name, hand, spot):
-        suffix = f"_{hand}" if self.response.solid else ""
-        key = (name, spot, suffix)
+        key = (name, spot, hand if self.response.solid else "")
         if key not in self.views:
             rates = tuple(sorted(self.response.rates[name, spot]))
-            self.views[key] = self.response.hands[name].view(self.blocks[name], spot, rates=rates, suffix=suffix)
+            self.views[key] = self.response.hands[name].view(self.blocks[name], spot, rates=rates, wheel=hand)
         return self.views[key]
 
     def value(self, request):

@@ -7,7 +7,7 @@ its geometry, so a study that was interrupted goes on with the tasks that are no
 import threading
 import time
 from collections.abc import Callable
-from concurrent.futures import FIRST_COMPLETED, Future, ThreadPoolExecutor, wait
+from concurrent.futures import FIRST_COMPLETED, ThreadPoolExecutor, wait
 from dataclasses import dataclass, field
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
@@ -23,6 +23,7 @@ from study.tabulate import tables
 from study.tasks import Outcome, StudyWork
 
 HEARTBEAT_S = 10.0
+KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the catalog has a price of its own
 
 
 class StudyFailed(WorkError):
@@ -144,15 +145,17 @@ class _Run:
         """Tasks on threads, at most two a thread in flight; the main thread keeps what comes back, in any order."""
         from threadpoolctl import threadpool_limits
 
-        waiting, running = list(reversed(tasks)), {}
+        waiting, running, fresh = list(reversed(tasks)), {}, []
         with threadpool_limits(1), ThreadPoolExecutor(self.threads) as pool:
             try:
-                while waiting or running:
+                while waiting or running or fresh:
                     while waiting and len(running) < 2 * self.threads:
                         task = waiting.pop()
                         running[pool.submit(self._timed, task)] = task
-                    ready, _ = wait(running, timeout=0.2, return_when=FIRST_COMPLETED)
-                    if not self._keep_all(ready, running, outcomes):
+                    ready = wait(running, timeout=0.1, return_when=FIRST_COMPLETED).done if running else ()
+                    fresh += [(running.pop(future), *future.result()) for future in ready]
+                    last = not (waiting or running)
+                    if not self._go_on(fresh, outcomes, last=last):
                         return False
             finally:
                 pool.shutdown(wait=False, cancel_futures=True)
@@ -162,29 +165,44 @@ class _Run:
         start = time.monotonic()
         return self.work.run(task), time.monotonic() - start
 
-    def _keep_all(self, ready: set[Future], running, outcomes) -> bool:
-        if self.watch.stop.is_set():
+    def _go_on(self, fresh, outcomes, *, last) -> bool:
+        """Keep what is fresh, a second's worth at a time, and stop where asked to; False when the study is not ours any more."""
+        stop = self.watch.stop.is_set()
+        late = time.monotonic() - self.last_sign > (KEEP_S if fresh else HEARTBEAT_S)
+        if (stop or last or late) and not (self._keep(fresh) if fresh else self._alive()):
+            return False
+        if stop or last or late:
+            for task, outcome, _ in fresh:
+                outcomes[task.number] = outcome
+                self.done += len(outcome.status)
+            fresh.clear()
+            self.watch.progress(self.job, self.done, self.total)
+        if stop and not last:
             with self.catalog.write() as con:
                 queue.release(con, self.job.id, self.worker)
             raise Stopped(f"study {self.job.id}: stopped; what is finished is kept, `holdtight work` goes on with it")
-        for future in ready:
-            task = running.pop(future)
-            outcome, seconds = future.result()
-            if not self._keep(task, outcome, seconds):
-                return False
-            outcomes[task.number] = outcome
-            self.done += len(outcome.status)
-            self.watch.progress(self.job, self.done, self.total)
-        return self._alive() if time.monotonic() - self.last_sign > HEARTBEAT_S else True
+        return True
 
-    def _keep(self, task, outcome, seconds):
+    def _keep(self, fresh) -> bool:
+        """Finished tasks into the catalog, in one transaction."""
         self.last_sign = time.monotonic()
-        values, more = _to_arrays(task, outcome, len(self.study.measures))
         with self.catalog.write() as con:
-            return store_chunk(
-                con, self.job.id, self.worker, stage=task.stage, chunk_no=task.number, first_build=self.work.first_build(task),
-                values=values, status=outcome.status, seconds=seconds, more=more,
-            )  # fmt: skip
+            return all(self._store(con, *one) for one in fresh)
+
+    def _store(self, con, task, outcome, seconds):
+        values, more = _to_arrays(task, outcome, len(self.study.measures))
+        return store_chunk(
+            con,
+            self.job.id,
+            self.worker,
+            stage=task.stage,
+            chunk_no=task.number,
+            first_build=self.work.first_build(task),
+            values=values,
+            status=outcome.status,
+            seconds=seconds,
+            more=more,
+        )
 
     def _alive(self):
         self.last_sign = time.monotonic()

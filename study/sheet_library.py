@@ -70,7 +70,9 @@ def _keep(text: str) -> None:
     try:
         path = cache_file()
         path.parent.mkdir(parents=True, exist_ok=True)
-        with tempfile.NamedTemporaryFile("w", encoding="utf-8", newline="", dir=path.parent, delete=False) as file:
+        with tempfile.NamedTemporaryFile(
+            "w", encoding="utf-8", newline="", dir=path.parent, delete=False
+        ) as file:
             file.write(f"{_hash(text)}\n{text}")
         os.replace(file.name, path)
     except (OSError, RuntimeError):

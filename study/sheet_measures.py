@@ -21,7 +21,9 @@ def measures(tables: tb.Tables, figures: Figures) -> Html:
     heads = tb.measures(tables)
     if not heads:
         return Html("")
-    return section("measures", "Measure by measure", _key(tables), *(_measure(tables, head, figures) for head in heads))
+    return section(
+        "measures", "Measure by measure", _key(tables), *(_measure(tables, head, figures) for head in heads)
+    )
 
 
 def _key(tables: tb.Tables) -> Html:
@@ -31,7 +33,9 @@ def _key(tables: tb.Tables) -> Html:
         parts.append("hollow bar: before alignment, filled: after")
     if any(finite(row.get("st_low")) is not None for row in ranking):
         parts.append("line: 95 % interval")
-    if any(finite(row.get("st")) is not None and finite(row.get("linear_share")) is not None for row in ranking):
+    if any(
+        finite(row.get("st")) is not None and finite(row.get("linear_share")) is not None for row in ranking
+    ):
         parts.append("diamond: linear share")
     if any(row.get("tied") for row in ranking):
         parts.append("≈: tied with the one above")
@@ -42,12 +46,16 @@ def _measure(tables: tb.Tables, head: dict, figures: Figures) -> Html:
     number_ = head["measure_no"]
     ranking, distribution = charts.ranking_spec(tables, number_), charts.distribution_spec(tables, number_)
     left = (
-        figures.add(ranking, _caption("What governs it", ranking), _ranking_data(tables, number_), paper_px=388)
+        figures.add(
+            ranking, _caption("What governs it", ranking), _ranking_data(tables, number_), paper_px=388
+        )
         if ranking
         else ""
     )
     right = (
-        figures.add(distribution, _caption("How it scatters", distribution), _bins_data(tables, number_), paper_px=275)
+        figures.add(
+            distribution, _caption("How it scatters", distribution), _bins_data(tables, number_), paper_px=275
+        )
         if distribution
         else ""
     )
@@ -88,13 +96,18 @@ def _linear_words(tables: tb.Tables, measure_no: int) -> Html:
             apart.append(f"{source_name(row['source'])} {percent(total)} against {percent(linear)}")
     if not apart:
         return Html("")
-    return tag("p", tag("b", "Not linear: "), "total and linear share differ: ", "; ".join(apart), ".", cls="small")
+    return tag(
+        "p", tag("b", "Not linear: "), "total and linear share differ: ", "; ".join(apart), ".", cls="small"
+    )
 
 
 def _ranking_data(tables: tb.Tables, measure_no: int) -> Html:
     rows = []
     for stage in reversed(tb.stages(tables["ranking"])):
-        rows += [_ranking_row(row, place) for place, row in enumerate(tb.ranked(tables, measure_no, stage), start=1)]
+        rows += [
+            _ranking_row(row, place)
+            for place, row in enumerate(tb.ranked(tables, measure_no, stage), start=1)
+        ]
     kept = [i for i in range(len(_RANKING_HEADS)) if i < 3 or any(row[i] not in ("", "–") for row in rows)]
     body = table(
         [_RANKING_HEADS[i] for i in kept],
@@ -153,4 +166,6 @@ def _bins_data(tables: tb.Tables, measure_no: int) -> Html:
         [left, right, row["count"]]
         for left, right, row in zip(edges[: len(rows)], edges[len(rows) :], rows, strict=True)
     ]
-    return details("The same as a table", table(["From", "to", "Builds"], body, words=0, caption="Builds per bin"))
+    return details(
+        "The same as a table", table(["From", "to", "Builds"], body, words=0, caption="Builds per bin")
+    )

@@ -40,7 +40,9 @@ def join(items: Iterable, between: str = "") -> Html:
 
 def table(heads: Sequence, rows: Iterable[Sequence], *, caption: str, cls: str = "", words: int = 1) -> Html:
     """A table in a box that scrolls by itself; the first `words` columns hold words, the others numbers."""
-    top = tag("tr", *(tag("th", head, scope="col", cls=None if i < words else "n") for i, head in enumerate(heads)))
+    top = tag(
+        "tr", *(tag("th", head, scope="col", cls=None if i < words else "n") for i, head in enumerate(heads))
+    )
     body = [
         tag(
             "tr",
@@ -51,7 +53,9 @@ def table(heads: Sequence, rows: Iterable[Sequence], *, caption: str, cls: str =
         )
         for row in rows
     ]
-    whole = tag("table", tag("caption", tag("span", caption)), tag("thead", top), tag("tbody", *body), cls=cls or None)
+    whole = tag(
+        "table", tag("caption", tag("span", caption)), tag("thead", top), tag("tbody", *body), cls=cls or None
+    )
     return tag("div", whole, cls="scroll", tabindex="0", role="region", aria_label=caption)
 
 
@@ -69,7 +73,9 @@ def pairs(items: Iterable[tuple]) -> Html:
 
 
 def section(name: str, title: str, *content) -> Html:
-    return tag("section", tag("h2", title, id=f"{name}-title"), *content, id=name, aria_labelledby=f"{name}-title")
+    return tag(
+        "section", tag("h2", title, id=f"{name}-title"), *content, id=name, aria_labelledby=f"{name}-title"
+    )
 
 
 class Figures:

@@ -69,7 +69,8 @@ def _points(tables: tb.Tables, geometry: dict, stage: str) -> Html:
         rows.append([source_name(source), item["text"], item["measure"], *place])
     if not rows:
         rows = [
-            [name.replace("_", " "), "", "", *(number(v, 4) for v in point)] for name, point in geometry["left"].items()
+            [name.replace("_", " "), "", "", *(number(v, 4) for v in point)]
+            for name, point in geometry["left"].items()
         ]
     return table(
         ["Source", "Greatest share", "of", "x, mm", "y, mm", "z, mm"],
@@ -91,10 +92,16 @@ def matrix(tables: tb.Tables, figures: Figures, stage: str) -> Html:
     ]
     data = details(
         "The same as a table",
-        table(["Source", *(head["name"] for head in heads)], rows, caption=f"Shares, {theme.STAGE_WORDS[stage]}"),
+        table(
+            ["Source", *(head["name"] for head in heads)], rows, caption=f"Shares, {theme.STAGE_WORDS[stage]}"
+        ),
     )
-    caption = join([tag("b", "Share in per cent"), f", {theme.STAGE_WORDS[stage]}; below 1 % left out; darker is more"])
-    return section("matrix", "Every source against every measure", figures.add(spec, caption, data, fit=False))
+    caption = join(
+        [tag("b", "Share in per cent"), f", {theme.STAGE_WORDS[stage]}; below 1 % left out; darker is more"]
+    )
+    return section(
+        "matrix", "Every source against every measure", figures.add(spec, caption, data, fit=False)
+    )
 
 
 def _relative(tables: tb.Tables, measure_no: int, stage: str) -> dict[str, float]:
@@ -190,7 +197,9 @@ def together(tables: tb.Tables, figures: Figures) -> Html:
         for row in tables["correlations"]
         if row.get("stage") == stage and finite(row.get("r")) is not None
     ]
-    data = details("The same as a table", table(["Measure", "with", "r"], body, words=2, caption="Correlation r"))
+    data = details(
+        "The same as a table", table(["Measure", "with", "r"], body, words=2, caption="Correlation r")
+    )
     return section(
         "together",
         "How the measures move together",

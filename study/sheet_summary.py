@@ -104,7 +104,9 @@ def _lead(heads: list[dict], leading: dict, stage: str) -> Html:
     if len(heads) < 2 or not often:
         return esc(start)
     named = [join([tag("b", source_name(source)), f" ({count})"]) for source, count in often]
-    return join([f"{start} Most often among the leading three of {len(heads)} measures: ", join(named, ", "), "."])
+    return join(
+        [f"{start} Most often among the leading three of {len(heads)} measures: ", join(named, ", "), "."]
+    )
 
 
 def _table(tables: tb.Tables, heads: list[dict], leading: dict, study: dict, stage: str) -> Html:
@@ -155,7 +157,11 @@ def _cell(row: dict, basis: tb.Basis, ranked: list[dict], place: int) -> Html:
 
 
 def verdict_tag(verdict: str | None) -> Html:
-    return tag("span", verdict, cls=f"tag {verdict}-v") if verdict in ("hold", "open", "watch") else esc(verdict or "")
+    return (
+        tag("span", verdict, cls=f"tag {verdict}-v")
+        if verdict in ("hold", "open", "watch")
+        else esc(verdict or "")
+    )
 
 
 def _good(row: dict, study: dict) -> Html:

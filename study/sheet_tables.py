@@ -57,7 +57,9 @@ def studied(study: dict, geometry: dict, alignment: list[dict]) -> Html:
         ]
     )
     text = details("The study file as given", tag("pre", study["text"])) if study.get("text") else ""
-    return section("studied", "What was studied, and with what", facts, _alignment(alignment), _perfect(study), text)
+    return section(
+        "studied", "What was studied, and with what", facts, _alignment(alignment), _perfect(study), text
+    )
 
 
 def _alignment(rows: list[dict]) -> Html:
@@ -217,7 +219,11 @@ def _verdicts(tables: tb.Tables, stage: str) -> dict[str, str]:
     found: dict[str, str] = {}
     for row in tables.get("ranking", []):
         verdict, source = row.get("verdict"), row["source"]
-        if row.get("stage") == stage and verdict in order and order[verdict] < order.get(found.get(source), 3):
+        if (
+            row.get("stage") == stage
+            and verdict in order
+            and order[verdict] < order.get(found.get(source), 3)
+        ):
             found[source] = verdict
     return found
 
@@ -232,7 +238,9 @@ def worst_builds(tables: tb.Tables) -> Html:
         groups.setdefault((row["measure_no"], row["stage"], row["direction"], row["value"]), []).append(row)
     body = []
     for (measure_no, stage, direction, value), errors in groups.items():
-        head = heads.get(measure_no, {"name": errors[0].get("measure") or f"measure {measure_no}", "unit": None})
+        head = heads.get(
+            measure_no, {"name": errors[0].get("measure") or f"measure {measure_no}", "unit": None}
+        )
         ordered = sorted(errors, key=lambda row: -abs(finite(row.get("error")) or 0.0))
         body.append(
             [
@@ -258,7 +266,7 @@ def worst_builds(tables: tb.Tables) -> Html:
 def _errors(rows: list[dict], most: int = 6) -> str:
     shown = [
         f"{source_name(row['source'])} {str(row.get('axis') or '').replace('_', ' ')} "
-        f"{quantity(row.get('error'), 'deg' if str(row.get('axis')).startswith('tilt') else 'mm', sign=True)}"
+        f"{quantity(row.get('error'), 'deg' if 'tilt' in str(row.get('axis')) else 'mm', sign=True)}"
         for row in rows[:most]
     ]
     return "; ".join(shown) + (f"; and {len(rows) - most} more" if len(rows) > most else "")

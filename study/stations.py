@@ -13,12 +13,12 @@ import numpy as np
 from catalog.errors import InputError
 from study.alignment import Bench
 from study.assembly import Corner, assemble
-from study.build import built_features
+from study.build import HANDS, built_features
 from study.kernel import solve as kernel
 from study.kernel.rows import linearise, road_plane
 from study.kernel.twists import twists
 from study.measures import KEYS
-from study.measures.view import View
+from study.measures.view import View, mirrored
 
 STEP = 0.05  # mm or degrees of the differences that give the starting effects
 LEAST_MOBILITY = 1e-6
@@ -53,7 +53,7 @@ class Station(NamedTuple):
 
 @dataclass(frozen=True)
 class Block:
-    """Some builds of one hand, assembled: kernel rows, parts, and each build's own zero of bump (N,) mm."""
+    """Some builds of one hand, assembled: kernel rows, parts, each wheel's own zero of bump (nw, N) mm, and all moves (Q, N)."""
 
     rows: object
     parts: object
@@ -62,15 +62,15 @@ class Block:
 
     @property
     def n(self) -> int:
-        return len(self.rise)
+        return self.rise.shape[1]
 
 
 class Hand:
     """One corner with what moves it: effects of the errors, alignment bench, bands."""
 
-    def __init__(self, corner: Corner, *, effects=(), bench: Bench, bands=None, scalars=0, vehicle=None):
-        self.corner, self.effects, self.bench = corner, tuple(effects), bench
-        self.bands, self.scalars, self.vehicle = bands or {}, scalars, vehicle
+    def __init__(self, name: str, corner: Corner, *, effects, bench: Bench, bands, scalars: int, vehicle):
+        self.name, self.corner, self.effects, self.bench = name, corner, tuple(effects), bench
+        self.bands, self.scalars, self.vehicle = bands, scalars, vehicle
         self._stations: dict[Spot, Station] = {}
         self.station(Spot(0.0, 0.0, 0.0))
 
@@ -79,8 +79,8 @@ class Hand:
         n = errors.shape[1]
         built = built_features(self.corner, self.effects, errors, self.bench.extra(settings))
         rows, parts = assemble(self.corner, built, n)
-        ride = self.bands.get("ride_height")
-        rise = np.zeros(n) if ride is None else errors[ride]
+        ride = [self.bands[hand].get("ride_height") for hand in (HANDS if self.corner.solid else (self.name,))]
+        rise = np.stack([np.zeros(n) if row is None else errors[row] for row in ride])
         return Block(rows, parts, rise, np.concatenate((errors, settings)))
 
     def station(self, spot: Spot) -> Station:
@@ -155,10 +155,8 @@ class Hand:
     def _rows_and_road(self, block, spot):
         rows = block.rows.racked(spot.rack_mm) if spot.rack_mm else block.rows
         if spot.locked:
-            return block.parts.locked(rows, self.view(block, spot.at_rest()))
-        return rows, road_plane(
-            roll_rad=np.radians(spot.roll_deg), ground_mm=self.corner.ground_mm, rise_mm=spot.bump_mm + block.rise
-        )
+            return block.parts.locked(rows, self.view(block, spot.at_rest(), wheel="left"))
+        return rows, self._road(block, spot)
 
     def poses(self, block: Block, station: Station):
         """Kernel poses of a block at a station, and what `twists` needs of them."""
@@ -171,27 +169,25 @@ class Hand:
         kernel.judge_branch(pose, station.sign)
         return pose, (rows, road, jacobian)
 
-    def view(self, block: Block, spot: Spot, *, rates=(), rest=None, locked=None, suffix="") -> View:
-        """The View of a block at a spot with the twists named in `rates`; `suffix` picks a solid axle's wheel."""
+    def view(self, block: Block, spot: Spot, *, rates=(), wheel="") -> View:
+        """The View of a block at a spot with the twists named in `rates`; `wheel`: the side, where one body carries both."""
         station = self.station(spot)
         pose, (rows, road, jacobian) = self.poses(block, station)
-        found = {}
-        if rates:
-            given = twists(rows, road, pose, jacobian, order=station.order, inputs=rates)
-            found = dict(zip(rates, given, strict=True))
-        features = {name: _turned(station.rotation, p) for name, p in block.parts.body.items()}
-        wheel = 1 if suffix == "_right" else 0
-        features["wheel_centre"] = features.get(f"wheel_centre{suffix}", features.get("wheel_centre"))
-        features["wheel_axis"] = features.get(f"wheel_axis{suffix}", features.get("wheel_axis"))
-        features["radius_mm"] = self.corner.radius_mm[wheel]
+        given = twists(rows, road, pose, jacobian, order=station.order, inputs=rates) if rates else ()
         if spot.locked:
-            road = road_plane(
-                roll_rad=np.radians(spot.roll_deg), ground_mm=self.corner.ground_mm, rise_mm=spot.bump_mm + block.rise
-            )
-        return View(
-            pose=pose, twists=found, features=features, road=road, parts=block.parts, vehicle=self.vehicle,
-            rack_mm=spot.rack_mm, rest=rest, locked=locked,
+            road = self._road(block, spot)
+        suffix, number = (f"_{wheel}", HANDS.index(wheel)) if self.corner.solid else ("", 0)
+        found = View(
+            pose=pose, twists=dict(zip(rates, given, strict=True)), parts=block.parts, vehicle=self.vehicle,
+            features=_of_wheel(block.parts.body, suffix, station.rotation) | {"radius_mm": self.corner.radius_mm[number]},
+            anchors=_of_wheel(block.parts.chassis, suffix), rack_mm=spot.rack_mm,
+            road=road._replace(height=road.height[number : number + 1]),
         )  # fmt: skip
+        return mirrored(found) if suffix == "_right" else found
+
+    def _road(self, block, spot):
+        roll = np.radians(spot.roll_deg)
+        return road_plane(roll_rad=roll, ground_mm=self.corner.ground_mm, rise_mm=spot.bump_mm + block.rise)
 
     def rates_for(self, info) -> tuple[str, ...]:
         """The twists that a measure reads on this linkage."""
@@ -208,13 +204,21 @@ class Hand:
         """The bench's target angles (A, N) deg of a block at design, NaN where it does not assemble; and its status (N,)."""
         infos = [KEYS[f"{target}_deg"] for target in self.bench.targets]
         rates = tuple(sorted({rate for info in infos for rate in self.rates_for(info)}))
-        view = self.view(block, Spot(0.0, 0.0, 0.0), rates=rates)
+        view = self.view(block, Spot(0.0, 0.0, 0.0), rates=rates, wheel="left")
         values = np.stack([info.evaluate(view) for info in infos])
         return np.where(view.pose.status == kernel.CLOSED, values, np.nan), view.pose.status
 
 
-def _turned(rotation, p):
-    return rotation @ p
+def _of_wheel(points, suffix, rotation=None):
+    """Named points without those of the other wheel, the own wheel's under their plain names; turned where asked for."""
+    out = {}
+    for name, point in points.items():
+        if suffix and name.endswith(("_left", "_right")):
+            if not name.endswith(suffix):
+                continue
+            name = name.removesuffix(suffix)
+        out[name] = point if rotation is None else rotation @ point
+    return out
 
 
 def _gibbs_of(rotation):

@@ -119,7 +119,7 @@ class _Stage:
             apart = 1.0 / np.diag(np.linalg.inv(hands.starts[name][1]))
             for target, step, gain in zip(hand.bench.targets, hand.bench.step, apart, strict=True):
                 if step:
-                    row = hand.bands[target]
+                    row = hand.bands[name][target]
                     extra_zones.append(Zone("length", (abs(gain) * step / 2.0,)))
                     columns.append(row)
                     groups.append(group[row])

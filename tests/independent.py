@@ -17,7 +17,7 @@ from scipy.optimize import brentq, root
 from scipy.spatial.transform import Rotation
 
 EDGE_MM = 250.0
-PAIRS = [(0, 1), (0, 2), (0, 3), (1, 2), (1, 3), (2, 3)]
+PAIRS = np.array([(0, 1), (0, 2), (0, 3), (1, 2), (1, 3), (2, 3)]).T
 
 
 @dataclass(frozen=True)
@@ -100,7 +100,7 @@ def weights(home, at_design) -> np.ndarray:
 
 
 def mix(corners, share) -> np.ndarray:
-    return np.einsum("...ik,i->...k", corners, share)
+    return share @ corners
 
 
 def plane(ground: float, bump_mm: float, roll_rad: float) -> tuple[np.ndarray, float]:
@@ -110,8 +110,8 @@ def plane(ground: float, bump_mm: float, roll_rad: float) -> tuple[np.ndarray, f
 
 
 def tyre_gap(normal, height, centre, spin, radius):
-    across = np.einsum("...k,k->...", spin, normal)
-    return np.einsum("...k,k->...", centre, normal) - radius * np.sqrt(1 - across**2) - height
+    across = spin @ normal
+    return centre @ normal - radius * np.sqrt(1 - across**2) - height
 
 
 def spring_square(body: Body, corners, home):
@@ -142,33 +142,34 @@ def triad(front, rear, ball):
 def equations(body: Body, home, bump_mm, roll_rad, rack_mm, hold):
     """The residuals in mm as a function of the unknowns (..., 12 or 13). `hold` replaces the tyre's touch."""
     normal, height = plane(body.ground, bump_mm, roll_rad)
-    edges = [np.linalg.norm(home[i] - home[j]) for i, j in PAIRS]
-    shares = [weights(home, link.body) for link in body.links]
-    ends = [link.chassis + np.array([0.0, rack_mm * link.steered, 0.0]) for link in body.links]
+    edges = np.linalg.norm(home[PAIRS[0]] - home[PAIRS[1]], axis=1)
+    shares = np.array([weights(home, link.body) for link in body.links])
+    ends = np.array([link.chassis + [0.0, rack_mm * link.steered, 0.0] for link in body.links])
+    lengths = np.array([link.length for link in body.links])
+    wheels = [(weights(home, t.centre), weights(home, t.centre + t.spin), t.radius) for t in body.tyres]
 
     def residuals(unknowns):
         corners = unknowns[..., :12].reshape(*unknowns.shape[:-1], 4, 3)
-        rows = []
-        for (i, j), edge in zip(PAIRS, edges, strict=True):
-            rows.append((((corners[..., i, :] - corners[..., j, :]) ** 2).sum(-1) - edge**2) / (2 * edge))
-        for link, share, end in zip(body.links, shares, ends, strict=True):
-            rows.append((((mix(corners, share) - end) ** 2).sum(-1) - link.length**2) / (2 * link.length))
+        spans = corners[..., PAIRS[0], :] - corners[..., PAIRS[1], :]
+        rods = shares @ corners - ends
+        rows = [
+            ((spans * spans).sum(-1) - edges**2) / (2 * edges),
+            ((rods * rods).sum(-1) - lengths**2) / (2 * lengths),
+        ]
         if body.strut is not None:
             top, lower, axis = body.strut
             low = mix(corners, weights(home, lower))
             along = mix(corners, weights(home, lower + axis)) - low
-            miss = top - low - unknowns[..., 12:13] * along
-            rows += [miss[..., 0], miss[..., 1], miss[..., 2]]
+            rows.append(top - low - unknowns[..., 12:13] * along)
         if hold is None:
-            for tyre in body.tyres:
-                centre = mix(corners, weights(home, tyre.centre))
-                spin = mix(corners, weights(home, tyre.centre + tyre.spin)) - centre
-                rows.append(tyre_gap(normal, height, centre, spin, tyre.radius))
+            for to_centre, to_spin, radius in wheels:
+                centre = mix(corners, to_centre)
+                rows.append(tyre_gap(normal, height, centre, mix(corners, to_spin) - centre, radius)[..., None])
         elif body.spring is not None:
-            rows.append((spring_square(body, corners, home) - hold**2) / (2 * hold))
+            rows.append((spring_square(body, corners, home) - hold**2)[..., None] / (2 * hold))
         else:
-            rows.append(mix(corners, weights(home, body.lock))[..., 2] - hold)
-        return np.stack(rows, axis=-1)
+            rows.append(mix(corners, weights(home, body.lock))[..., 2:3] - hold)
+        return np.concatenate(rows, axis=-1)
 
     return residuals
 
@@ -187,9 +188,7 @@ def solve(body: Body, start: Pose, *, bump_mm=0.0, roll_rad=0.0, rack_mm=0.0, ho
         return (residuals(nudged).imag / 1e-30).T
 
     found = root(residuals, first, jac=jacobian, method="hybr", options={"xtol": 1e-13})
-    unknowns = found.x
-    for _ in range(2):
-        unknowns = unknowns - np.linalg.solve(jacobian(unknowns), residuals(unknowns))
+    unknowns = found.x - np.linalg.solve(jacobian(found.x), residuals(found.x))
     left_over = np.abs(residuals(unknowns)).max()
     if not left_over < 1e-9:
         raise Impossible(f"bump {bump_mm}, roll {roll_rad}, rack {rack_mm}: {left_over} mm left over")
@@ -206,7 +205,7 @@ def turn_about_hinge(body: Body, start: Pose, bump_mm, roll_rad) -> Pose:
         turn = Rotation.from_rotvec(angle * axis)
         return tyre_gap(normal, height, inner + turn.apply(tyre.centre - inner), turn.apply(tyre.spin), tyre.radius)
 
-    bracket = np.linspace(-0.6, 0.6, 49)
+    bracket = np.linspace(-0.6, 0.6, 13)
     gaps = np.array([gap(angle) for angle in bracket])
     crossing = np.flatnonzero(np.sign(gaps[:-1]) != np.sign(gaps[1:]))
     if not len(crossing):

@@ -26,7 +26,13 @@ class Parts:
         self.errors = errors or {}
 
     def of(self, part: str, name: str) -> np.ndarray:
-        return self.points[name] + np.asarray(self.errors.get(f"{part}.{name}", (0.0, 0.0, 0.0)))
+        return self.points[name] + self.shift(f"{part}.{name}")
+
+    def shift(self, feature: str) -> np.ndarray:
+        return np.asarray(self.errors.get(feature, (0.0, 0.0, 0.0)), float)
+
+    def mount(self, on_rack: bool) -> np.ndarray:
+        return self.shift("rack.mount") * on_rack
 
     def extra(self, feature: str) -> float:
         return float(self.errors.get(feature, 0.0))
@@ -68,7 +74,7 @@ def arm_links(parts: Parts, arm: str, build: str, located_by: str) -> tuple[Link
 
 def tie_rod(parts: Parts, on_rack: bool) -> Link:
     holder = "rack" if on_rack else "chassis"
-    inner = parts.of(holder, "tie_rod_inner") + np.asarray(parts.errors.get("rack.mount", (0, 0, 0)), float) * on_rack
+    inner = parts.of(holder, "tie_rod_inner") + parts.mount(on_rack)
     own = np.linalg.norm(parts.points["tie_rod_outer"] - parts.points["tie_rod_inner"])
     return Link(inner, parts.of("upright", "tie_rod_outer"), float(own + parts.extra("tie_rod.length")), True)
 
@@ -77,7 +83,7 @@ def tyre_of(wheel: dict, parts: Parts, part="upright", suffix="") -> Tyre:
     spin = spin_axis(wheel.get("camber_deg", 0.0), wheel.get("toe_deg", 0.0))
     if wheel.get("right"):
         spin = spin * FLIP
-    centre = np.asarray(wheel["centre"], float) + np.asarray(parts.errors.get(f"{part}.wheel_centre{suffix}", (0, 0, 0)))
+    centre = np.asarray(wheel["centre"], float) + parts.shift(f"{part}.wheel_centre{suffix}")
     about_x, about_z = parts.errors.get(f"{part}.hub_axis{suffix}", (0.0, 0.0))
     return Tyre(centre, tilted(spin, about_x, about_z), float(wheel["loaded_radius"]))
 
@@ -158,8 +164,8 @@ def rods(parts: Parts, links: dict, steer_link: str | None, part: str, steered: 
         holder = "rack" if steered and name == steer_link else "chassis"
         own = np.linalg.norm(np.subtract(outer, inner)) + parts.extra(f"{name}.length")
         ends = (
-            np.asarray(inner, float) + np.asarray(parts.errors.get(f"{holder}.{name}_inner", (0, 0, 0))),
-            np.asarray(outer, float) + np.asarray(parts.errors.get(f"{part}.{name}_outer", (0, 0, 0))),
+            np.asarray(inner, float) + parts.shift(f"{holder}.{name}_inner") + parts.mount(holder == "rack"),
+            np.asarray(outer, float) + parts.shift(f"{part}.{name}_outer"),
         )
         made.append(Link(*ends, float(own), name == steer_link))
     return tuple(made)

@@ -127,9 +127,7 @@ def bump_values(corner: Corner) -> dict:
     v, turning = bump_twist(corner, where)
     roll = corner.at["roll_rad"]
     gains = richardson(lambda h: corner.angles(corner.near("bump_mm", h), roll), BUMP_STEP_MM)
-    creep = corner.axes @ richardson(
-        lambda h: corner.contact(corner.near("bump_mm", h), corner.normal), BUMP_STEP_MM
-    )
+    creep = corner.axes @ richardson(lambda h: corner.contact(corner.near("bump_mm", h), corner.normal), BUMP_STEP_MM)
     values = {
         "camber_gain_deg_per_mm": gains[0],
         "bump_steer_deg_per_mm": gains[1],
@@ -268,7 +266,7 @@ SIDE_CENTRE = ("side_view_ic_x_mm", "side_view_ic_z_mm")
 
 
 def allowance(key: str, values: dict, axle: dict) -> float:
-    """How far a value by differences may be off: rates are good to about 1e-11 per mm, quotients of them to less."""
+    """How far a value by differences may be off: rates are good to 1e-11 per mm, quotients to less."""
     size = max(1.0, abs(values[key]))
     if key in FRONT_CENTRE:
         return 1e-7 * size + 1e-10 * size * abs(values["swing_arm_mm"])

@@ -14,7 +14,14 @@ from hypothesis import strategies as st
 from tests import independent_bodies as bodies
 
 LINKAGES = ("double-wishbone", "strut", "five-link", "semi-trailing-arm", "solid-axle")
-WAYS = {"forward": (1, 0, 0), "rear": (-1, 0, 0), "left": (0, 1, 0), "right": (0, -1, 0), "up": (0, 0, 1), "down": (0, 0, -1)}
+WAYS = {
+    "forward": (1, 0, 0),
+    "rear": (-1, 0, 0),
+    "left": (0, 1, 0),
+    "right": (0, -1, 0),
+    "up": (0, 0, 1),
+    "down": (0, 0, -1),
+}
 UNIT_MM = {"mm": 1.0, "m": 1000.0, "in": 25.4}
 SPRING = {"spring_inner": [0.0, 400.0, 560.0], "spring_outer": [4.0, 575.0, 210.0]}
 
@@ -190,7 +197,9 @@ def toml_text(spec: dict, *, axes="x-forward y-left z-up", units="mm", side="lef
         if key in ("wheelbase", "cg_height"):
             lines.append(f"{key} = {length(value)}")
         else:
-            lines.append(f"{key} = {str(value).lower()}" if isinstance(value, bool | float | int) else f'{key} = "{value}"')
+            lines.append(
+                f"{key} = {str(value).lower()}" if isinstance(value, bool | float | int) else f'{key} = "{value}"'
+            )
     return "\n".join(lines) + "\n"
 
 

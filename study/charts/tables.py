@@ -119,7 +119,9 @@ def greatest(tables: Tables, stage: str) -> dict[str, dict]:
         basis = basis_of(rows)
         if basis is None:
             continue
-        for row, value in zip(rows, relative(rows, basis).values(), strict=True):
+        values = relative(rows, basis)
+        for row in rows:
+            value = values[row["source"]]
             if row["source"] not in best or value > best[row["source"]]["value"]:
                 best[row["source"]] = {
                     "value": value,

@@ -136,7 +136,7 @@ def step_text(row: Mapping, index: int) -> str:
     """The unit step that an effect belongs to: `+1 mm z`, `+1 mm longer`, `+1° tilt 1`."""
     axes = list(row.get("effect_axes") or [])
     axis = str(axes[index]) if index < len(axes) else ""
-    angle = axis.startswith("tilt") or str(row.get("effect_unit") or "").endswith("/deg")
+    angle = "tilt" in axis or str(row.get("effect_unit") or "").endswith("/deg")
     if str(row.get("source")).startswith("alignment."):
         axis = "off"
     return f"+1{'°' if angle else NBSP + 'mm'} " + {"length": "longer"}.get(axis, axis.replace("_", " "))

@@ -50,7 +50,8 @@ def pivot_order(jacobian) -> Order:
     rows, columns = np.arange(n), np.arange(n)
     for k in range(n):
         i, j = divmod(int(np.argmax(np.abs(a[k:, k:]))), n - k)
-        a[[k, k + i]], a[:, [k, k + j]] = a[[k + i, k]], a[:, [k + j, k]]
+        a[[k, k + i]] = a[[k + i, k]]
+        a[:, [k, k + j]] = a[:, [k + j, k]]
         rows[[k, k + i]], columns[[k, k + j]] = rows[[k + i, k]], columns[[k + j, k]]
         if a[k, k]:
             a[k + 1 :, k:] -= np.outer(a[k + 1 :, k] / a[k, k], a[k, k:])
@@ -175,14 +176,21 @@ def _newton(rows, road, rotation, t, goal, jacobian, close):
     return rotation, t
 
 
-def _lapack(jacobian, right):
-    """Steps (6, N) by pivoted LU; a build with a singular or lost Jacobian gets NaN, not an exception for all."""
+def solve_each(jacobian, right):
+    """Solutions by pivoted LU of Jacobians (6, 6, N) for right sides (6, k, N); NaN where a Jacobian is singular or lost."""
     a = np.moveaxis(jacobian, -1, 0)
     with np.errstate(all="ignore"):
-        sound = np.isfinite(a).all(axis=(1, 2)) & (np.abs(np.linalg.det(np.where(np.isfinite(a), a, 0.0))) > 0)
+        sound = np.isfinite(a).all(axis=(1, 2))
+        sound &= np.abs(np.linalg.det(np.where(sound[:, None, None], a, 0.0))) > 0
     out = np.full(right.shape, np.nan)
     if sound.any():
-        out[:, sound] = np.linalg.solve(a[sound], right.T[sound][..., None])[..., 0].T
+        out[..., sound] = np.moveaxis(np.linalg.solve(a[sound], np.moveaxis(right, -1, 0)[sound]), 0, -1)
+    return out
+
+
+def _lapack(jacobian, right):
+    """Steps (6, N), clipped so that a wild one cannot throw the body away."""
+    out = solve_each(jacobian, right[:, None])[:, 0]
     out[:3], out[3:] = np.clip(out[:3], -50.0, 50.0), np.clip(out[3:], -0.5, 0.5)
     return out
 

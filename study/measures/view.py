@@ -9,22 +9,22 @@ from functools import cached_property
 
 import numpy as np
 
-from study.kernel.vectors import cross, dot, norm, turn_each, unit
+from study.kernel.vectors import cross, dot, turn_each, unit
 
 
 class View:
     """A wheel's pose and twists.
 
-    pose: kernel Pose; twists: dict input → (6, N); features: body features of this wheel (wheel_centre, wheel_axis
-    (3, N), radius_mm) in the pose's frame; road: kernel Road of this wheel (height (1, N)); steering: `SteeringAxis` or
-    None; lock: `Lock`; vehicle: object with axle, wheelbase_mm, …; spring_rate: (N,) spring length per mm of road rise
-    or None; fit: dict arm → (N,) mm; rack_mm; rest, locked: other Views, where asked for.
+    pose: kernel Pose; twists: dict input → (6, N); features: body features of this wheel (wheel_centre, wheel_axis,
+    ball joints, … (3, N), radius_mm) in the pose's frame; anchors: chassis points (spring_inner, strut_top); road: kernel
+    Road of this wheel (height (1, N)); parts: what tells steering axis, lock, spring and fit; vehicle: object with axle,
+    wheelbase_mm, …; rest, locked: the same wheel with the rack at rest, and with the suspension held, where asked for.
     """
 
-    def __init__(self, *, pose, twists, features, road, parts, vehicle, rack_mm=0.0, rest=None, locked=None):
-        self.pose, self.twists, self.features, self.road = pose, twists, features, road
+    def __init__(self, *, pose, twists, features, anchors, road, parts, vehicle, rack_mm=0.0):
+        self.pose, self.twists, self.features, self.anchors, self.road = pose, twists, features, anchors, road
         self.parts, self.vehicle, self.rack_mm = parts, vehicle, rack_mm
-        self.rest, self.locked = rest, locked
+        self.rest = self.locked = None
 
     def undefined(self):
         """NaN for every build."""
@@ -157,6 +157,30 @@ class View:
         return point + k * ((height - point[2]) / k[2])
 
 
+MIRROR = np.array([1.0, -1.0, 1.0])
+
+
+def mirrored(view: View) -> View:
+    """The right wheel of a body that carries both wheels, in mirrored coordinates: y → −y, roll → −roll.
+
+    R → M R M, points → M p, twists v → M v, ω → −M ω; per unit of roll the twist changes sign with the roll.
+    """
+    flip = MIRROR[:, None]
+    pose = view.pose._replace(rotation=view.pose.rotation * MIRROR[:, None, None] * MIRROR[None, :, None], t=view.pose.t * flip)
+    twists = {
+        name: np.concatenate((t[:3] * flip, -t[3:] * flip)) * (-1.0 if name == "roll" else 1.0) for name, t in view.twists.items()
+    }
+    road = view.road._replace(
+        normal=view.road.normal * flip, normal_roll=-view.road.normal_roll * flip, height_roll=-view.road.height_roll
+    )
+    features = {name: value if np.isscalar(value) else value * flip for name, value in view.features.items()}
+    anchors = {name: point * flip for name, point in view.anchors.items()}
+    return View(
+        pose=pose, twists=twists, features=features, anchors=anchors, road=road, parts=view.parts, vehicle=view.vehicle,
+        rack_mm=view.rack_mm,
+    )  # fmt: skip
+
+
 def screw_axis(twist, t):
     """Axis of a twist (6, N) whose v is that of the point t: (a point on it, its direction ω)."""
     w = twist[3:]
@@ -173,4 +197,4 @@ class AxleView:
         return self.left.undefined()
 
 
-__all__ = ["AxleView", "View", "norm", "screw_axis"]
+__all__ = ["AxleView", "View", "mirrored", "screw_axis"]

@@ -27,7 +27,7 @@ def test_angles_end_at_the_nominal_plus_the_band(geometry):
     errors = drawn(made.model)
     found = made.evaluate(errors)
     nominal = made.evaluate(np.zeros((made.model.scalars, 1))).values
-    bands = errors[[made.hands["left"].bands[target] for target in ("toe", "camber", "caster")]]
+    bands = errors[[made.model.bands["left"][target] for target in ("toe", "camber", "caster")]]
     assert (found.status == 0).all()
     np.testing.assert_allclose(found.values, nominal + bands, atol=2e-9, rtol=0)
 
@@ -82,7 +82,7 @@ def test_ride_height_shifts_the_builds_own_zero_of_bump_in_both_stages():
             wishbone(), stage=stage, measures=measures, errors='"tie_rod.length" = { length = 0.5 }', **keys
         )
         errors = np.zeros((made.model.scalars, 2))
-        errors[made.hands["left"].bands["ride_height"], 0] = 1.5
+        errors[made.model.bands["left"]["ride_height"], 0] = 1.5
         found[stage] = made.evaluate(errors).values
     assert found["before"][0, 0] == pytest.approx(found["before"][1, 1], abs=1e-9)
     assert found["after"][2, 0] == pytest.approx(found["after"][2, 1], abs=2e-9)  # toe is set where the car stands

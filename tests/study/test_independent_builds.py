@@ -1,7 +1,5 @@
 """Built and aligned cars against corners put together one by one by other equations."""
 
-import copy
-
 import numpy as np
 import pytest
 from scipy.optimize import root
@@ -72,7 +70,9 @@ def draw(response, count, seed):
     rng = np.random.default_rng(seed)
     errors = np.zeros((response.model.scalars, count))
     for source in response.model.sources:
-        size = {"alignment.ride_height": 2.0}.get(source.name, 0.08 if "alignment" in source.name else SIZES[source.kind])
+        size = {"alignment.ride_height": 2.0}.get(
+            source.name, 0.08 if "alignment" in source.name else SIZES[source.kind]
+        )
         for rows in source.columns:
             errors[list(rows)] = rng.uniform(-size, size, (len(rows), count))
     return errors
@@ -83,7 +83,7 @@ def hand_errors(response, errors, number, hand):
     found = {}
     for source in response.model.sources:
         values = errors[list(source.of_hand(hand)), number]
-        if source.name == "rack.mount":
+        if source.name == "rack.mount" and response.study.sides == "independent":
             found[source.name] = values * [1, -1 if hand == "right" else 1, 1]
         elif source.kind == "length":
             found[source.name] = float(values[0])
@@ -216,8 +216,7 @@ def align_again(spec, errors, ride, adjust, *, fixed=None):
     def built(settings):
         out = errors
         for target, by in adjust.items():
-            out = moved_by(out, by, fixed.get(target, dict(zip(free, settings, strict=True)).get(target)),
-            spec)
+            out = moved_by(out, by, fixed.get(target, dict(zip(free, settings, strict=True)).get(target)), spec)
         return out
 
     found = root(lambda x: angles(spec, built(x), ride, free) - goal, np.zeros(len(free)), tol=1e-12)
@@ -303,7 +302,3 @@ of = "toe_deg"
         errors[1] = 1.0
         toe = response.evaluate(errors).values[0, 0]
         assert abs(toe) == pytest.approx(wanted, abs=6e-4 if wanted else 1e-8)
-
-
-def test_copies_do_not_share(kinematics):
-    assert copy.deepcopy(kinematics) == kinematics

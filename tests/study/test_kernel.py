@@ -62,6 +62,12 @@ def test_pivot_order_keeps_the_determinants_sign():
         assert kernel.branch_sign(lu, order)[0] == np.sign(np.linalg.det(a))
 
 
+def test_pivot_order_takes_the_greatest_entry_left():
+    a = np.diag([1.0, 5.0, 3.0, 200.0, 800.0, 400.0])[[3, 1, 5, 0, 2, 4]]
+    order = kernel.pivot_order(a)
+    np.testing.assert_allclose(np.diag(a[order.rows][:, order.columns]), [5.0, 800.0, 3.0, 400.0, 1.0, 200.0])
+
+
 @pytest.mark.parametrize("geometry", [wishbone, spatial_corner])
 def test_jacobians_are_the_residuals_differences(geometry):
     rows, road, corner = rows_of(geometry())

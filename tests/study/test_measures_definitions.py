@@ -1,5 +1,6 @@
 """Every measure against its definition, taken by differences of independent poses; signs on plain cases."""
 
+import numpy as np
 import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
@@ -11,7 +12,7 @@ from tests import strategies
 from tests.independent import Impossible
 from tests.independent_measures import disagreements
 from tests.independent_measures import evaluate as by_differences
-from tests.strategies import LINKAGES, SPRING, STEERS, bodies_of, spec_of, specs, toml_text, vehicle_of
+from tests.strategies import LINKAGES, SPRING, STEERS, bodies_of, shifted, spec_of, specs, toml_text, vehicle_of
 
 FRONT = {"axle": "front", "wheelbase": 2500, "cg_height": 400, "brake_share": 0.6, "drive_share": 0.3}
 
@@ -54,6 +55,20 @@ def test_all_keys_are_there_each_in_its_place(linkage):
     per_axle = {key for key, info in KEYS.items() if info.scope == "axle" or (solid and key.endswith("_pct"))}
     assert set(found["axle"]) == per_axle
     assert set(found["left"]) == set(found["right"]) == set(KEYS) - per_axle
+
+
+@pytest.mark.parametrize("linkage", LINKAGES)
+@settings(max_examples=5)
+@given(data=st.data(), grid=st.sampled_from([25.0, 50.0]))
+def test_round_numbers_and_level_arms_are_no_special_case(linkage, data, grid):
+    """Points on a coarse grid: many rows of the equations have zeros, arms are level, hinges lie along the car."""
+    spec = shifted(data.draw(specs(linkage)), lambda p: [grid * round(v / grid) for v in p])
+    spec["wheel"] |= {"camber_deg": 0.0, "toe_deg": 0.0}
+    try:
+        expected = by_differences(*bodies_of(spec), vehicle_of(spec))
+    except (Impossible, np.linalg.LinAlgError):
+        assume(False)
+    assert not disagreements(expected, program(spec))
 
 
 def test_sides_that_differ():

@@ -29,8 +29,7 @@ def flat_corner(lower_inner, lower_ball, upper_inner, upper_ball, centre, radius
         "tie_rod_inner": [-100.0, *lower_inner],
         "tie_rod_outer": [-100.0, *lower_ball],
     }
-    return spec_of("double-wishbone", points=points, wheel={"centre": centre, "loaded_radius": radius},
-    **rest)
+    return spec_of("double-wishbone", points=points, wheel={"centre": centre, "loaded_radius": radius}, **rest)
 
 
 # --- planar linkage, angle against angle
@@ -197,7 +196,9 @@ def ideal_outer(inner_deg, across, wheelbase):
 
 def test_ackermann_share_is_that_of_the_ideal_difference(kinematics):
     ref = kinematics["ackermann"]
-    assert ideal_outer(ref["inner_deg"], ref["axes_apart"], ref["wheelbase"]) == pytest.approx(ref["outer_deg"], abs=6e-5)
+    assert ideal_outer(ref["inner_deg"], ref["axes_apart"], ref["wheelbase"]) == pytest.approx(
+        ref["outer_deg"], abs=6e-5
+    )
     spec = spec_of("double-wishbone", vehicle={"axle": "front", "wheelbase": 2500})
     straight, turned = program(spec), program(spec, rack_mm=-26.0)
     left = straight["left"]["toe_deg"] - turned["left"]["toe_deg"]
@@ -244,8 +245,7 @@ def test_virtual_work(spec):
     front = car["axle"] == "front"
     for key, share, inboard in (
         ("anti_dive_pct" if front else "anti_lift_pct", "brake_share", car["brakes"] == "inboard"),
-        ("drive_anti_lift_pct" if front else "anti_squat_pct", "drive_share", car["drive_torque"] ==
-        "chassis"),
+        ("drive_anti_lift_pct" if front else "anti_squat_pct", "drive_share", car["drive_torque"] == "chassis"),
     ):
         where = np.array(spec["wheel"]["centre"]) if inboard else contact
         jacking = -reaction(spec, np.array([1.0 if front else -1.0, 0, 0]), where)
@@ -262,8 +262,7 @@ def test_what_stays_of_body_roll_in_front_view(spec):
     """1 - (half track / swing arm) of the roll stays as camber, in a linkage that moves in the front view
     only."""
     p = spec["points"]
-    pick = [p[name][1:] for name in ("lower_front_pivot", "lower_ball_joint", "upper_front_pivot",
-    "upper_ball_joint")]
+    pick = [p[name][1:] for name in ("lower_front_pivot", "lower_ball_joint", "upper_front_pivot", "upper_ball_joint")]
     left = program(flat_corner(*pick, [0.0, 745.0, 300.0], 300.0))["left"]
     kept = 1 - left["half_track_mm"] * left["swing_arm_curvature_per_m"] / 1000
     assert left["roll_camber_deg_per_deg"] == pytest.approx(kept, abs=1e-9)

@@ -22,7 +22,9 @@ def program(spec, **position):
 
 def trailing_arm(inner, outer, vehicle, **wheel):
     wheel = {"centre": [0.0, 720.0, RADIUS], "loaded_radius": RADIUS} | wheel
-    return spec_of("semi-trailing-arm", points={"hinge_inner": inner, "hinge_outer": outer}, wheel=wheel, vehicle=vehicle)
+    return spec_of(
+        "semi-trailing-arm", points={"hinge_inner": inner, "hinge_outer": outer}, wheel=wheel, vehicle=vehicle
+    )
 
 
 # --- lengthways: angles of the side-view instant centre
@@ -40,8 +42,7 @@ def test_anti_dive_angle_of_a_published_build(kinematics):
 
 
 def rear_car(**rest):
-    return {"axle": "rear", "wheelbase": 2500, "cg_height": 500, "drive_share": 1.0, "brake_share": 0.4} |
-    rest
+    return {"axle": "rear", "wheelbase": 2500, "cg_height": 500, "drive_share": 1.0, "brake_share": 0.4} | rest
 
 
 @pytest.mark.parametrize("reacted_by", ["chassis", "axle"])
@@ -52,8 +53,7 @@ def test_full_anti_squat_of_a_trailing_arm(reacted_by):
     spec = trailing_arm([ahead, 200.0, high], [ahead, 600.0, high], rear_car(drive_torque=reacted_by))
     left = program(spec)["left"]
     assert left["anti_squat_pct"] == pytest.approx(100.0, abs=1e-7)
-    lower = trailing_arm([ahead, 200.0, high - 50], [ahead, 600.0, high - 50],
-    rear_car(drive_torque=reacted_by))
+    lower = trailing_arm([ahead, 200.0, high - 50], [ahead, 600.0, high - 50], rear_car(drive_torque=reacted_by))
     assert program(lower)["left"]["anti_squat_pct"] < 100
 
 
@@ -187,7 +187,7 @@ def test_the_longer_the_swing_arm_the_closer_camber_follows_roll(kinematics):
         inside = 720.0 - share * 1440.0
         left = program(trailing_arm([250.0, inside, 310.0], [-150.0, inside, 310.0], rear_car()))["left"]
         kept.append(left["roll_camber_deg_per_deg"])
-    assert kept == sorted(kept) and 0 < kept[0] and kept[-1] < 1
+    assert kept == sorted(kept) and kept[0] > 0 and kept[-1] < 1
 
 
 # --- strut and five links: statics of the design position
@@ -217,8 +217,7 @@ def jacking(spec, force, where):
         for other in ([1.0, 0, 0], [0, 1.0, 0]):
             columns.append(wrench(np.cross(along, other) / np.linalg.norm(along), points["strut_top"], about))
     for inner, outer in rods:
-        columns.append(wrench(np.subtract(inner, outer) / np.linalg.norm(np.subtract(inner, outer)), outer,
-        about))
+        columns.append(wrench(np.subtract(inner, outer) / np.linalg.norm(np.subtract(inner, outer)), outer, about))
     columns.append(wrench(np.array([0, 0, 1.0]), about, about))
     return -np.linalg.solve(np.array(columns).T, -wrench(force, where, about))[5]
 

@@ -1,0 +1,255 @@
+"""Studies run through a catalog: the same bits however they are run, interrupted, accompanied or cancelled."""
+
+import os
+import signal
+import subprocess
+import sys
+import time
+
+import pytest
+
+from catalog import queue, results
+from catalog.errors import HoldtightError
+from catalog.store import Catalog
+from study import tasks
+from study.runner import Watch, enqueue, register, work
+from study.study_file import parse_study
+from study.tasks import StudyWork
+from tests.study.small_studies import DEMO, ROOT, TOE, demo, small_study, study_text
+
+BUILDS_PER_TASK = 256
+KEYS = ("camber_deg", "roll_centre_height_mm")
+# a worker of its own: small tasks, and a pause in each so that there is time to interrupt it
+WORKER = f"""
+import sys, time
+from study import tasks
+from study.commands import main
+tasks.BUILDS_PER_TASK = {BUILDS_PER_TASK}
+done = tasks.StudyWork.run
+tasks.StudyWork.run = lambda self, task: (time.sleep(0.1), done(self, task))[1]
+sys.argv = ["holdtight", "work", "--threads", "2"]
+main()
+"""
+
+
+@pytest.fixture
+def catalog(tmp_path):
+    return Catalog(tmp_path / "shop.duckdb")
+
+
+@pytest.fixture(autouse=True)
+def small_tasks(monkeypatch):
+    monkeypatch.setattr(tasks, "BUILDS_PER_TASK", BUILDS_PER_TASK)
+
+
+@pytest.fixture
+def worker(catalog):
+    """Start `work` in a process of its own; what still runs at the end is ended."""
+    started = []
+
+    def start():
+        environment = os.environ | {"HOLDTIGHT_CATALOG": str(catalog.path), "PYTHONPATH": str(ROOT)}
+        pipes = {"stdin": subprocess.DEVNULL, "stdout": subprocess.PIPE, "stderr": subprocess.PIPE}
+        started.append(subprocess.Popen([sys.executable, "-c", WORKER], env=environment, text=True, **pipes))
+        return started[-1]
+
+    yield start
+    for process in started:
+        if process.poll() is None:
+            process.kill()
+        process.communicate()
+
+
+def ask(catalog, **asked):
+    """Queue a study of the demo geometry; gives its number."""
+    return enqueue(catalog, small_study(*KEYS, **asked), DEMO.parent, by="test")
+
+
+def job(catalog, number):
+    with catalog.read() as con:
+        return queue.get(con, number)
+
+
+def tables_of(catalog, number):
+    with catalog.read() as con:
+        return results.load_results(con, number)
+
+
+def run_all(catalog, *, threads=1):
+    return work(catalog, threads=threads, watch=Watch())
+
+
+def wait_for(condition, *, process, seconds=60.0):
+    """Wait until a condition holds while the process lives; gives what the condition gave."""
+    end = time.monotonic() + seconds
+    while time.monotonic() < end:
+        found = condition()
+        if found:
+            return found
+        assert process.poll() is None, process.communicate()
+        time.sleep(0.02)
+    raise AssertionError("waited in vain")
+
+
+def chunks_of(catalog, number):
+    with catalog.read() as con:
+        query = "SELECT stage, chunk_no, n_builds, hash FROM kept.chunks WHERE study_id = ? ORDER BY chunk_no, hash"
+        return con.execute(query, [number]).fetchall()
+
+
+def same_numbers(mine, theirs):
+    """Whether result tables agree to rounding."""
+    for name in ("ranking", "stats"):
+        for row, other in zip(mine[name], theirs[name], strict=True):
+            for key, value in row.items():
+                near = isinstance(value, float | list) and key != "effect_axes"
+                assert other[key] == (pytest.approx(value, rel=1e-9, abs=1e-12) if near else value), (name, key)
+
+
+@pytest.mark.parametrize("method", ["sobol", "spread"])
+def test_one_thread_and_two_give_the_same_bits(catalog, method):
+    sizes = {"sobol": 64, "spread": 1000}
+    numbers = [ask(catalog, method=method, size=sizes[method], alignment=TOE) for _ in range(2)]
+    for number, threads in zip(numbers, (1, 2), strict=True):
+        work(catalog, threads=threads, watch=Watch(), study_id=number)
+    one, two = (job(catalog, number) for number in numbers)
+    assert one.state == two.state == "done"
+    assert one.result_hash and one.result_hash == two.result_hash
+    assert sorted(chunks_of(catalog, one.id)) == sorted(chunks_of(catalog, two.id))
+    assert len(chunks_of(catalog, one.id)) > 4
+
+
+def test_the_size_of_chunks_does_not_change_the_numbers(catalog, monkeypatch):
+    found = []
+    for size in (BUILDS_PER_TASK, 100, 4096):
+        monkeypatch.setattr(tasks, "BUILDS_PER_TASK", size)
+        number = ask(catalog, method="sobol", size=64, alignment=TOE)
+        run_all(catalog)
+        found.append(tables_of(catalog, number))
+    for other in found[1:]:
+        same_numbers(other, found[0])
+
+
+@pytest.mark.parametrize("method", ["sobol", "morris", "spread"])
+def test_seed_0_is_a_seed_like_any_other(catalog, method):
+    sizes = {"sobol": 16, "morris": 8, "spread": 64}
+    numbers = [ask(catalog, method=method, size=sizes[method], seed=seed) for seed in (0, 0, 1)]
+    run_all(catalog)
+    first, again, other = (job(catalog, number) for number in numbers)
+    assert (first.seed, other.seed) == (0, 1)
+    assert first.result_hash == again.result_hash != other.result_hash
+
+
+def test_builds_really_run_are_counted(catalog):
+    number = ask(catalog, method="spread", size=700, alignment=TOE)
+    run_all(catalog)
+    effects, curves = 1 + 2 * 13, 257  # four points of three scalars and one band
+    assert tables_of(catalog, number)["study"][0]["builds"] == 2 * (700 + effects) + curves
+    assert job(catalog, number).done == job(catalog, number).total
+
+
+def test_a_study_killed_twice_ends_with_the_bits_of_one_that_was_not(catalog, worker):
+    asked = {"method": "spread", "size": 3000, "alignment": TOE}
+    number = ask(catalog, **asked)
+    for end, state in ((signal.SIGINT, "queued"), (signal.SIGKILL, "running")):
+        process, before = worker(), job(catalog, number).done
+        wait_for(lambda before=before: job(catalog, number).done > before + 2 * BUILDS_PER_TASK, process=process)
+        process.send_signal(end)
+        process.communicate(timeout=60)
+        assert process.returncode == (1 if end == signal.SIGINT else -signal.SIGKILL)
+        left = job(catalog, number)
+        assert left.state == state and 0 < left.done < left.total
+    kept = chunks_of(catalog, number)
+    assert run_all(catalog, threads=2) == [number]
+
+    untouched = ask(catalog, **asked)
+    run_all(catalog)
+    assert job(catalog, number).result_hash == job(catalog, untouched).result_hash
+    assert set(kept) < set(chunks_of(catalog, number))
+    assert chunks_of(catalog, number) == chunks_of(catalog, untouched)
+    assert job(catalog, number).done == job(catalog, untouched).done == job(catalog, number).total
+
+
+def test_others_queue_ask_and_cancel_while_a_worker_runs(catalog, worker):
+    long, process = ask(catalog, method="spread", size=20000), worker()
+    wait_for(lambda: job(catalog, long).done, process=process)
+    short = ask(catalog, method="spread", size=64)
+    with catalog.read() as con:
+        assert [(j.id, j.state) for j in queue.list_studies(con)] == [(long, "running"), (short, "queued")]
+    with catalog.write() as con:
+        assert queue.cancel(con, [long]) == {long: "cancelled"}
+    out, err = process.communicate(timeout=120)
+    assert process.returncode == 0, err
+    assert out.strip() == f"finished: {short}"
+    assert (job(catalog, long).state, job(catalog, short).state) == ("cancelled", "done")
+    assert job(catalog, long).done < 20000
+    assert work(catalog, threads=1, watch=Watch(), study_id=long) == []
+
+
+def test_a_study_that_fails_says_why_and_the_next_one_runs(catalog):
+    geometry = demo()
+    revision = register(catalog, geometry, by="test", why="test")
+    asked = {"title": "t", "method": "spread", "size": 64, "seed": 0, "sides": "mirrored", "version": "0", "by": "test"}
+    text = study_text("no_such_measure", method="spread", size=64)
+    with catalog.write() as con:
+        bad = queue.enqueue(con, text=text, revision_id=revision.id, **asked)
+    good = ask(catalog, method="spread", size=64)
+    assert run_all(catalog) == [good]
+    assert job(catalog, bad).state == "failed" and "no_such_measure" in job(catalog, bad).error
+    assert job(catalog, good).state == "done"
+
+
+def test_a_fault_in_a_task_fails_the_study_and_is_not_hidden(catalog, monkeypatch):
+    number = ask(catalog, method="spread", size=64)
+    monkeypatch.setattr(StudyWork, "run", lambda self, task: 1 / 0)
+    with pytest.raises(ZeroDivisionError):
+        run_all(catalog)
+    assert job(catalog, number).state == "failed" and "ZeroDivisionError" in job(catalog, number).error
+
+
+def test_stop_before_the_first_task_leaves_the_study_queued(catalog):
+    number, watch = ask(catalog, method="spread", size=64), Watch()
+    watch.progress = lambda job, done, total: watch.stop.set()
+    assert work(catalog, threads=1, watch=watch) == []
+    assert job(catalog, number).state == "queued"
+    assert run_all(catalog) == [number]
+
+
+def test_progress_counts_up_to_the_total(catalog):
+    seen = []
+    ask(catalog, method="spread", size=700)
+    work(catalog, threads=2, watch=Watch(progress=lambda job, done, total: seen.append((done, total))))
+    counts, totals = zip(*seen, strict=True)
+    assert list(counts) == sorted(counts) and set(totals) == {counts[-1]}
+
+
+def test_a_study_names_a_revision_that_stays_when_the_file_changes(catalog, tmp_path):
+    file = tmp_path / "front-wishbone.toml"
+    text = DEMO.read_text(encoding="utf-8")
+    numbers = []
+    for version in (text, text.replace("tie_rod_inner     = [88, 308, 156.5]", "tie_rod_inner = [88, 308, 158.5]")):
+        file.write_text(version, encoding="utf-8")
+        numbers.append(enqueue(catalog, small_study("bump_steer_deg_per_mm"), tmp_path, by="test"))
+    old = parse_study(study_text("bump_steer_deg_per_mm", geometry="front-wishbone@1"), source="old")
+    numbers.append(enqueue(catalog, old, tmp_path, by="test"))
+    run_all(catalog)
+    first, second, again = (tables_of(catalog, number) for number in numbers)
+    assert [job(catalog, n).geometry for n in numbers] == ["front-wishbone@1", "front-wishbone@2", "front-wishbone@1"]
+    assert first["stats"][0]["nominal"] == again["stats"][0]["nominal"] != second["stats"][0]["nominal"]
+
+
+@pytest.mark.parametrize(
+    ("asked", "word"),
+    [
+        ({"alignment": {"toe": '{ by = "tie_rods", within_deg = 0.1 }'}}, "tie_rod"),
+        ({"errors": {"chasis.*": "{ plus_minus = 1.0 }"}}, "chasis"),
+        ({"geometry": "nowhere@3"}, "nowhere"),
+        ({"geometry": "nowhere.toml"}, "nowhere.toml"),
+    ],
+)
+def test_a_study_that_cannot_run_is_refused_before_it_is_queued(catalog, asked, word):
+    register(catalog, demo(), by="test", why="test")
+    with pytest.raises(HoldtightError, match=word):
+        ask(catalog, **asked)
+    with catalog.read() as con:
+        assert queue.list_studies(con) == []
