@@ -16,6 +16,7 @@ from study.assembly import ARM_PIVOTS, Corner
 ANGLES = ("toe", "camber", "caster")
 TOLERANCE_DEG = 1e-9
 MOST_PASSES = 12
+LEAST_WAY_MM = 1e-6
 ALIGNED, NOT_ALIGNED = 0, 3
 
 
@@ -124,7 +125,7 @@ def align(bench: Bench, measure, *, goal, start, gains, stepless=False) -> Setti
     stepless ones are set again. With `stepless` the steps are left out.
     """
     n = goal.shape[1]
-    state = _State(measure, goal, start.copy(), np.repeat(gains[:, :, None], n, axis=2))
+    state = _State(measure, goal, start.copy(), gains)
     free = np.ones((len(bench.targets), n), bool)
     ran_out = _set_within_reach(state, free, bench.reach[:, None])
     stepped = bench.step > 0
@@ -162,8 +163,9 @@ def _set_within_reach(state, free, reach):
 class _State:
     """Settings of all builds with their angles and Broyden matrices (A, A, N)."""
 
-    def __init__(self, measure, goal, settings, matrix):
-        self.measure, self.goal, self.settings, self.matrix = measure, goal, settings, matrix
+    def __init__(self, measure, goal, settings, gains):
+        self.measure, self.goal, self.settings, self.gains = measure, goal, settings, gains
+        self.matrix = np.repeat(gains[:, :, None], goal.shape[1], axis=2)
         self.miss = measure(settings) - goal
 
     def solve(self, free):
@@ -174,21 +176,40 @@ class _State:
             self.move_to(self.settings + self._step(free))
 
     def _step(self, free):
-        """Newton step of the free adjusters; pinned ones get the identity's row and no step."""
+        """Newton step of the free adjusters; pinned ones get the identity's row and no step.
+
+        Where a build's own matrix has turned singular the nominal's takes its place.
+        """
+        right = np.where(free, -np.nan_to_num(self.miss), 0.0).T[..., None]
+        own, nominal = self._masked(self.matrix, free), self._masked(self.gains[:, :, None], free)
+        own = np.where(_sound(own)[:, None, None], own, nominal)
+        sound = _sound(own)
+        step = np.zeros(right.shape)
+        step[sound] = np.linalg.solve(own[sound], right[sound])
+        return step[..., 0].T
+
+    def _masked(self, matrix, free):
         eye = np.eye(len(free))[:, :, None]
-        a = np.where(free[:, None] & free[None], self.matrix, eye)
-        right = np.where(free, -np.nan_to_num(self.miss), 0.0)
-        return np.linalg.solve(np.moveaxis(a, -1, 0), right.T[..., None])[..., 0].T
+        return np.moveaxis(np.where(free[:, None] & free[None], matrix, eye), -1, 0)
 
     def move_to(self, settings):
-        """Measure at new settings and give the matrix Broyden's update for the way gone."""
+        """Measure at new settings and give the matrix Broyden's update for the way gone.
+
+        Ways shorter than LEAST_WAY_MM are left out: rounding of the angles would drown what they tell.
+        """
         step = settings - self.settings
         miss = self.measure(settings) - self.goal
         length = (step * step).sum(axis=0)
         error = miss - self.miss - np.einsum("abn,bn->an", self.matrix, step)
-        with np.errstate(all="ignore"):
-            update = np.where(
-                (length > 0) & np.isfinite(error).all(axis=0), error / np.where(length > 0, length, 1.0), 0.0
-            )
+        told = (length > LEAST_WAY_MM**2) & np.isfinite(error).all(axis=0)
+        update = np.where(told, error / np.where(told, length, 1.0), 0.0)
         self.matrix = self.matrix + update[:, None] * step[None]
         self.settings, self.miss = settings, miss
+
+
+def _sound(matrices):
+    """Which of the matrices (N, A, A) can be solved with."""
+    largest = np.abs(matrices).max(axis=(1, 2), initial=0.0)
+    scaled = np.where(np.isfinite(largest) & (largest > 0), largest, 1.0)[:, None, None]
+    finite = np.isfinite(matrices).all(axis=(1, 2))
+    return finite & (np.abs(np.linalg.det(np.where(finite[:, None, None], matrices / scaled, 0.0))) > 1e-9)

@@ -17,13 +17,14 @@ class NotFinished(InputError):
 
 @dataclass(frozen=True)
 class Dossier:
-    """study: facts (dict); asked: the Study; geometry: the record; tables: result tables; model: its sources."""
+    """study: facts (dict); asked: the Study; geometry: the record; tables: result tables; model: its sources; nominal: measures at design."""
 
     study: dict
     asked: Study
     geometry: object
     tables: dict[str, list[dict]]
     model: BuildModel
+    nominal: dict
 
     @property
     def stages(self) -> tuple[str, ...]:
@@ -45,9 +46,10 @@ def load_dossier(catalog: Catalog, number: int) -> Dossier:
             why = f": {job.error}" if job.error else ""
             raise NotFinished(f"study {number} is {job.state}{why}; `holdtight work` runs what is queued")
         tables = results.load_results(con, number)
-        geometry = revisions.load(con, revisions.by_id(con, job.revision_id))
+        revision = revisions.by_id(con, job.revision_id)
+        geometry, nominal = revisions.load(con, revision), revisions.measures_of(con, revision)
     asked = parse_study(job.text, source=f"study {number}")
     facts = tables.pop("study")[0] | {"created": job.created, "by": job.by, "finished": job.finished}
     hands = ("left",) if geometry.linkage == "solid-axle" else ("left", "right")
     model = build_model({hand: corner_of(geometry, hand) for hand in hands}, asked)
-    return Dossier(facts, asked, geometry, tables, model)
+    return Dossier(facts, asked, geometry, tables, model, nominal)

@@ -17,7 +17,7 @@ def write_sheet(dossier, path: Path) -> Path:
     from study.sheet import render
 
     html = render(
-        dossier.tables, study=_facts(dossier), geometry=drawing_of(dossier.geometry), tolerances=tolerances(dossier),
+        dossier.tables, study=_facts(dossier), geometry=_drawing(dossier), tolerances=tolerances(dossier),
         alignment=alignment(dossier),
     )  # fmt: skip
     try:
@@ -34,13 +34,19 @@ def write_charts(dossier, folder: Path) -> list[Path]:
     """Write every chart as SVG, PNG, PDF and Vega-Lite JSON."""
     from study.charts import every, export
 
-    made = every(dossier.tables, drawing_of(dossier.geometry))
+    made = every(dossier.tables, _drawing(dossier))
     return [path for stem, chart in made.items() for path in export(chart, folder, stem)]
 
 
 def _facts(dossier):
     asked = dossier.asked
     return dossier.study | {"wanted_share": asked.wanted_share, "cars": asked.cars, "stages": list(dossier.stages)}
+
+
+def _drawing(dossier):
+    axle = dossier.nominal["axle"]
+    height, offset = axle.get("roll_centre_height_mm"), axle.get("roll_centre_offset_mm")
+    return drawing_of(dossier.geometry) | ({} if height is None else {"roll_centre_mm": (offset or 0.0, height)})
 
 
 def drawing_of(geometry) -> dict:

@@ -2,11 +2,12 @@
 
 from study.charts import tables as tb
 from study.charts.tables import Tables, plain
+from study.sheet_hold import hold_these
 from study.sheet_library import library
 from study.sheet_measures import measures
 from study.sheet_page import Figures, Html, document, join, tag
 from study.sheet_sections import curves, demand, matrix, together, where
-from study.sheet_summary import hold_these, title_block
+from study.sheet_summary import title_block
 from study.sheet_tables import cautions, notes, statistics, studied, tolerance_table, worst_builds
 
 __all__ = ["render"]

@@ -4,12 +4,12 @@ from study import charts
 from study.charts import tables as tb
 from study.charts.words import (
     aligned,
+    effects_text,
     finite,
     number,
     percent,
     quantity,
     source_name,
-    step_text,
     unit_text,
 )
 from study.sheet_page import Figures, Html, details, join, section, table, tag
@@ -108,12 +108,12 @@ def _ranking_data(tables: tb.Tables, measure_no: int) -> Html:
             _ranking_row(row, place)
             for place, row in enumerate(tb.ranked(tables, measure_no, stage), start=1)
         ]
-    kept = [i for i in range(len(_RANKING_HEADS)) if i < 3 or any(row[i] not in ("", "–") for row in rows)]
     body = table(
-        [_RANKING_HEADS[i] for i in kept],
-        [[row[i] for i in kept] for row in rows],
+        _RANKING_HEADS,
+        rows,
         words=3,
-        caption="All sources; shares with their 95 % interval; effects per mm, or per degree of an angle",
+        spare=True,
+        caption="All sources; shares with their 95 % interval; effects signed, in the part's axes",
     )
     return details("The same as a table, all sources and axes", body)
 
@@ -141,25 +141,12 @@ def interval(row: dict, key: str) -> str:
     return f"{text} ({low} to {high})" if finite(row.get(f"{key}_low")) is not None else text
 
 
-def effects_text(row: dict) -> str:
-    """All signed effects of a source: `+1 mm x → +0.02 mm, …`."""
-    effects = row.get("effect") or []
-    return (
-        ", ".join(
-            f"{step_text(row, i).removeprefix('+1')}: {quantity(value, row.get('unit'), sign=True)}"
-            for i, value in enumerate(effects)
-            if finite(value) is not None
-        )
-        .replace("\u00a0mm ", "")
-        .replace("° ", "")
-    )
-
-
 def _bins_data(tables: tb.Tables, measure_no: int) -> Html:
+    stage = tb.last_stage(tables)
     rows = [
         row
         for row in tables.get("histogram", [])
-        if row.get("measure_no") == measure_no and row.get("stage") == tb.last_stage(tables)
+        if row.get("measure_no") == measure_no and row.get("stage") == stage
     ]
     edges = aligned([row["left"] for row in rows] + [row["right"] for row in rows])
     body = [

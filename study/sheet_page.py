@@ -7,6 +7,7 @@ from html import escape
 from study import sheet_style
 from study.charts import theme
 
+_EMPTY = ("", "–", None)
 _DROPPED = ("$schema", "config", "usermeta")
 
 
@@ -38,8 +39,23 @@ def join(items: Iterable, between: str = "") -> Html:
     return Html(esc(between).join(esc(item) for item in items))
 
 
-def table(heads: Sequence, rows: Iterable[Sequence], *, caption: str, cls: str = "", words: int = 1) -> Html:
-    """A table in a box that scrolls by itself; the first `words` columns hold words, the others numbers."""
+def table(
+    heads: Sequence,
+    rows: Iterable[Sequence],
+    *,
+    caption: str,
+    cls: str = "",
+    words: int = 1,
+    spare: bool = False,
+) -> Html:
+    """A table in a box that scrolls by itself; the first `words` columns hold words, the others numbers.
+
+    With `spare` a column that is empty in every row is left out.
+    """
+    rows = [list(row) for row in rows]
+    kept = [i for i in range(len(heads)) if not spare or any(row[i] not in _EMPTY for row in rows)]
+    heads, rows = [heads[i] for i in kept], [[row[i] for i in kept] for row in rows]
+    words = sum(i < words for i in kept)
     top = tag(
         "tr", *(tag("th", head, scope="col", cls=None if i < words else "n") for i, head in enumerate(heads))
     )

@@ -4,6 +4,7 @@ from study.charts import tables as tb
 from study.charts import theme
 from study.charts.words import (
     aligned,
+    effects_text,
     finite,
     good_percent,
     limits_text,
@@ -12,7 +13,6 @@ from study.charts.words import (
     source_name,
     unit_text,
 )
-from study.sheet_measures import effects_text
 from study.sheet_page import Html, details, esc, pairs, section, table, tag
 from study.sheet_summary import METHODS, thousands, verdict_tag
 
@@ -127,6 +127,7 @@ def statistics(tables: tb.Tables) -> Html:
             heads,
             [_stat_row(row) for row in rows],
             words=4,
+            spare=True,
             caption="Every measure over the builds. RSS and worst case: root-sum-square and arithmetic stack of "
             "the linear effects, ± from nominal. Measures named cross are left minus right.",
         ),
@@ -190,6 +191,7 @@ def tolerance_table(tolerances: list[dict], tables: tb.Tables, stage: str) -> Ht
             heads,
             rows,
             words=7,
+            spare=True,
             caption="One row a drawing feature. Effects: of 1 mm, or of 1° of an angle, in the "
             "part's axes (x forward, y left, z up; left side)",
         ),
@@ -258,6 +260,7 @@ def worst_builds(tables: tb.Tables) -> Html:
             ["Measure", "Stage", "", "Value", "Errors that make it"],
             body,
             words=5,
+            spare=True,
             caption="The worst build inside the zones, the best found by search; the largest errors first",
         ),
     )

@@ -130,8 +130,9 @@ def vehicles(draw, linkage: str) -> dict:
 
 
 def vehicle_of(spec: dict) -> dict:
-    """The vehicle as the independent measures want it."""
-    given = dict(spec.get("vehicle", {}))
+    """The vehicle as the independent measures want it; an axle holds its own drive torque unless said."""
+    reacted_by = "axle" if spec["linkage"] == "solid-axle" else "chassis"
+    given = {"drive_torque": reacted_by} | spec.get("vehicle", {})
     for name in ("wheelbase", "cg_height"):
         given[f"{name}_mm"] = given.pop(name, None)
     return given

@@ -29,6 +29,9 @@ _BETWEEN = {
 }
 
 
+_ON_RACK = 0.8  # the mount is drawn on the rack, near the end of the side that is shown
+
+
 def source_place(geometry: Geometry, source: str, side: str = "left") -> Point | None:
     """Where an error source is drawn on one side, or None when it has no place (alignment bands, jigs)."""
     part, _, feature = source.partition(".")
@@ -44,12 +47,9 @@ def source_place(geometry: Geometry, source: str, side: str = "left") -> Point |
         return tuple(geometry["wheel"][side]["centre"])
     if feature == "hub_axis":
         return along_hub(geometry["wheel"][side])
-    if source == "rack.mount":
-        return (
-            _mean([(x, 0.0, z) for x, _, z in [points["tie_rod_inner"]]])
-            if "tie_rod_inner" in points
-            else None
-        )
+    if source == "rack.mount" and "tie_rod_inner" in points:
+        x, y, z = points["tie_rod_inner"]
+        return x, _ON_RACK * y, z
     ends = _BETWEEN.get(source, (f"{part}_inner", f"{part}_outer"))
     return _mean([points[end] for end in ends]) if all(end in points for end in ends) else None
 

@@ -7,7 +7,8 @@ from study.charts.frame import Frame, sides
 from study.charts.words import number
 
 _FORWARD = {"front": "car's left →", "side": "← forward", "top": "↑ forward"}
-_LINK = "#777f86"
+_MEMBER = {"colour": "#777f86", "width": 2.4}
+_SPRING = {"colour": theme.GREY, "width": 1.2, "dash": "dash"}
 
 
 def scenery(frame: Frame, geometry: places.Geometry, tables: Mapping) -> dict[str, list[dict]]:
@@ -50,9 +51,13 @@ def _ground(frame: Frame, geometry: places.Geometry) -> list[dict]:
 def _links(frame: Frame, geometry: places.Geometry) -> list[dict]:
     shown = sides(geometry, frame.kind) if places.two_sides(geometry) else ["left"]
     return [
-        _rule(frame.px(geometry[side][a]), frame.px(geometry[side][b]), colour=_LINK, width=2.4)
+        _rule(
+            frame.px(geometry[side][a]),
+            frame.px(geometry[side][b]),
+            **(_SPRING if part == "spring" else _MEMBER),
+        )
         for side in shown
-        for a, b, _ in geometry["lines"]
+        for a, b, part in geometry["lines"]
         if a in geometry[side] and b in geometry[side]
     ]
 

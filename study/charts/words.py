@@ -132,11 +132,35 @@ def effect_phrase(row: Mapping) -> str:
     return f"{step_text(row, index)} → {quantity(effects[index], row.get('unit'), sign=True)}"
 
 
+def effects_text(row: Mapping) -> str:
+    """All signed effects of a source: `x +0.02, y −0.31, z +1.92 mm per mm`; what is but rounding is 0."""
+    effects = [finite(value) for value in (row.get("effect") or [])]
+    largest = max((abs(value) for value in effects if value is not None), default=0.0)
+    texts = [
+        f"{_axis(row, index)} {number(value if abs(value) > 1e-5 * largest else 0.0, sign=True)}".strip()
+        for index, value in enumerate(effects)
+        if value is not None
+    ]
+    unit = unit_text(row.get("unit"))
+    gap = "" if unit == "°" else NBSP
+    return f"{', '.join(texts)}{gap}{unit} per {_step_unit(row)}" if texts else ""
+
+
 def step_text(row: Mapping, index: int) -> str:
     """The unit step that an effect belongs to: `+1 mm z`, `+1 mm longer`, `+1° tilt 1`."""
+    unit = _step_unit(row)
+    return f"+1{unit if unit == '°' else NBSP + unit} {_axis(row, index)}".rstrip()
+
+
+def _step_unit(row: Mapping) -> str:
+    angle = any("tilt" in str(axis) for axis in row.get("effect_axes") or [])
+    return "°" if angle or str(row.get("effect_unit") or "").endswith(("/deg", "per deg", "per °")) else "mm"
+
+
+def _axis(row: Mapping, index: int) -> str:
     axes = list(row.get("effect_axes") or [])
-    axis = str(axes[index]) if index < len(axes) else ""
-    angle = "tilt" in axis or str(row.get("effect_unit") or "").endswith("/deg")
+    axis = str(axes[index]).replace("_", " ") if index < len(axes) else ""
     if str(row.get("source")).startswith("alignment."):
-        axis = "off"
-    return f"+1{'°' if angle else NBSP + 'mm'} " + {"length": "longer"}.get(axis, axis.replace("_", " "))
+        side = axis.split(" ")[0]
+        return f"{side} off" if side in ("left", "right") else "off"
+    return axis.replace("length", "longer")

@@ -23,8 +23,10 @@ def run(
     from study.commands.critical_command import print_ranking
     from study.commands.work_command import progress_watch, stop_on_signals
     from study.runner import enqueue, work
+    from study.sheet_library import prepare
     from study.study_file import read_study
 
+    prepare()
     store, asked = Catalog(catalog), read_study(study)
     number = enqueue(store, asked, study.parent, by=by_whom(by))
     with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):

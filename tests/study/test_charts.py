@@ -170,7 +170,7 @@ def test_view_carries_every_measure_to_choose_from(tables):
         ("chassis.lower_front_pivot", (148.0, 262.0, 131.0)),
         ("tie_rod.length", (78.0, 442.0, 153.5)),
         ("upright.wheel_centre", (0.0, 652.0, 262.0)),
-        ("rack.mount", (74.0, 0.0, 158.0)),
+        ("rack.mount", (74.0, 230.4, 158.0)),
         ("alignment.toe", None),
         ("jigs.front", None),
     ],
@@ -226,6 +226,20 @@ def test_effect_phrase_takes_the_largest_signed_effect():
     row = {"source": "chassis.a", "effect": [0.1, -1.92, None], "effect_axes": ["x", "y", "z"], "unit": "mm"}
     assert words.effect_phrase(row) == "+1\u00a0mm y → −1.92\u00a0mm"
     assert words.effect_phrase(row | {"effect": None}) == ""
+
+
+def test_effects_name_axis_unit_and_step():
+    row = {
+        "source": "upright.hub_axis",
+        "effect": [1.5, -3e-9],
+        "effect_axes": ["tilt_1", "tilt_2"],
+        "unit": "mm",
+    }
+    assert words.effects_text(row) == "tilt 1 +1.50, tilt 2 0\u00a0mm per °"
+    row = {"source": "alignment.camber", "effect": [0.98], "effect_axes": ["left camber"], "unit": "deg",
+           "effect_unit": "deg per deg"}  # fmt: skip
+    assert words.effect_phrase(row) == "+1° left off → +0.980°"
+    assert words.effects_text({"source": "a.b", "effect": None}) == ""
 
 
 def test_plain_takes_numbers_of_any_kind():

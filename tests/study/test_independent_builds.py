@@ -1,14 +1,17 @@
 """Built and aligned cars against corners put together one by one by other equations."""
 
+from pathlib import Path
+
 import numpy as np
 import pytest
 from scipy.optimize import root
 
-from catalog.geometry_file import parse_geometry
+from catalog.geometry_file import parse_geometry, read_geometry
 from study.measures import KEYS
 from study.response import Response
 from study.study_file import parse_study
-from tests.independent_measures import Corner, disagreements
+from tests.conftest import REFERENCES
+from tests.independent_measures import Corner, disagreements, wheel_values
 from tests.independent_measures import evaluate as by_differences
 from tests.strategies import LINKAGES, SPRING, bodies_of, spec_of, toml_text, vehicle_of
 
@@ -133,19 +136,19 @@ def test_built_cars(linkage, arms, sides):
     """Every feature of every part off at once."""
     spec = case(linkage, arms)
     response = response_of(spec, sides=sides, adjust={}, ride=True, stage="before")
-    errors = draw(response, 2, seed=len(linkage))
+    rides = [1.7] if sides == "mirrored" else [-1.1, 0.6]
+    errors = draw(response, len(rides), seed=len(linkage))
     for hand in ("left", "right"):
-        errors[response.model.bands[hand]["ride_height"]] = [1.7, -1.1]
+        errors[response.model.bands[hand]["ride_height"]] = rides
     outcome = response.evaluate(errors)
     assert not outcome.status.any()
-    for number, ride in enumerate([1.7, -1.1]):
+    for number, ride in enumerate(rides):
         left, right = (hand_errors(response, errors, number, hand) for hand in ("left", "right"))
         check_build(response, outcome, spec, number, left, right, ride)
 
 
 def test_an_error_moves_only_its_part_and_never_the_design():
-    """A chassis pivot moves the car and not the length of the arm: 1 mm outboard pushes the ball joint
-    outboard."""
+    """A chassis pivot moves the car and not the arm's length: 1 mm outboard pushes the ball joint outboard."""
     spec = case("double-wishbone", ARMS[1])
     response = response_of(spec, sides="mirrored", adjust={}, stage="before")
     names = [source.name for source in response.model.sources]
@@ -201,8 +204,6 @@ def moved_by(errors, by, amount, spec):
 
 def angles(spec, errors, ride, targets):
     corner = Corner(bodies_of(spec, errors)[0], bump_mm=ride)
-    from tests.independent_measures import wheel_values
-
     values = wheel_values(corner)
     return np.array([values[f"{target}_deg"] for target in targets])
 
@@ -277,10 +278,40 @@ def test_an_adjuster_that_runs_out_stays_at_its_stop_and_toe_is_still_set():
     check_build(response, outcome, spec, 0, built, built, 0.0)
 
 
+DEMO = Path(__file__).parents[2] / "studies"
+AS_SET = """
+[[measures]]
+of = "toe_deg"
+[[measures]]
+of = "caster_deg"
+[[measures]]
+of = "camber_deg"
+"""
+
+
+@pytest.mark.parametrize("seed", [0, 10])
+def test_thousands_of_stepped_builds_are_left_where_the_workshop_leaves_them(seed):
+    """Builds that are set early wait for the others without harm."""
+    text = (DEMO / "front-brackets.toml").read_text(encoding="utf-8")
+    study = parse_study(text[: text.index("[[measures]]")] + AS_SET, source="s.toml")
+    response = Response(read_geometry(DEMO / study.geometry), study)
+    unit = np.random.default_rng(seed).random((response.model.scalars, 4096))
+    errors = response.model.field.to_errors(unit)
+    outcome = response.evaluate(errors)
+    assert not outcome.status.any()
+    rows = response.model.bands["left"]
+    nominal = response.evaluate(np.zeros((response.model.scalars, 1))).values[:, 0]
+    for number, target in enumerate(["toe", "caster"]):
+        left = outcome.values[number] - nominal[number] - errors[rows[target]]
+        assert np.abs(left).max() < 1e-7, target
+    steps = outcome.settings[1] / 0.5
+    assert np.abs(steps - np.round(steps)).max() < 1e-9
+    camber_left = outcome.values[2] - nominal[2] - errors[rows["camber"]]
+    assert np.abs(camber_left).max() < 0.1  # half a step of 0.5 mm, a little over a quarter of a degree per mm
+
+
 def test_a_millimetre_of_rack_end_and_the_toe_adjuster(kinematics):
     """0.414 degrees of toe before alignment, none of it after."""
-    from tests.conftest import REFERENCES
-
     ref = kinematics["spatial_corner"]
     text = (REFERENCES / ref["geometry"]).read_text(encoding="utf-8")
     geometry = parse_geometry(text, source="spatial-corner.toml")

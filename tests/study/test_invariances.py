@@ -50,7 +50,7 @@ def same(one, two, tolerance=1e-9, *, skip=(), change=lambda key, value: value):
 
 
 @pytest.mark.parametrize("linkage", LINKAGES)
-@settings(max_examples=4)
+@settings(max_examples=2)
 @given(data=st.data())
 def test_a_right_hand_file_is_its_mirrored_left_hand_file(linkage, data):
     """A solid axle's links are given for the whole axle: mirrored, they make the mirrored car."""
@@ -94,7 +94,7 @@ def test_every_axis_system_and_unit_gives_the_same_measures():
 
 
 @pytest.mark.parametrize("linkage", LINKAGES)
-@settings(max_examples=4)
+@settings(max_examples=2)
 @given(data=st.data())
 def test_axes_and_units_do_not_matter_anywhere(linkage, data):
     spec, position = data.draw(specs(linkage)), position_of(linkage)
@@ -106,7 +106,7 @@ def test_axes_and_units_do_not_matter_anywhere(linkage, data):
 
 
 @pytest.mark.parametrize("linkage", LINKAGES)
-@settings(max_examples=3)
+@settings(max_examples=2)
 @given(data=st.data(), along=st.floats(-3000, 3000))
 def test_a_shift_along_the_car_changes_no_angle_and_no_rate(linkage, data, along):
     spec, position = data.draw(specs(linkage)), position_of(linkage)
@@ -135,7 +135,7 @@ def scaled_value(c):
 
 
 @pytest.mark.parametrize("linkage", LINKAGES)
-@settings(max_examples=3)
+@settings(max_examples=2)
 @given(data=st.data(), c=st.floats(0.6, 1.6))
 def test_scaling_lengths_scales_lengths_and_leaves_angles(linkage, data, c):
     spec = data.draw(specs(linkage))

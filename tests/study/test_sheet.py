@@ -70,6 +70,13 @@ def test_the_three_leading_sources_stand_at_the_top(page):
     assert "34 %" in row and "+1 mm" in row and "≈ tied" in row and "wanted 95 %" in row
 
 
+def test_settings_of_the_workshop_are_not_among_what_to_hold(page):
+    text = words_of(page)
+    row = text[text.index("Cross camber") : text.index("Share of the measure")]
+    assert "setting: camber 93 %" in row
+    assert "camber (alignment)" not in row
+
+
 def test_what_was_studied_stands_on_it(page):
     text = words_of(page)
     for words in ("invented-front@2", "36 864", "variance shares (Sobol&#x27;)", "Random seed 0",

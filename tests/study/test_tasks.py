@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from catalog.geometry_file import parse_geometry
-from study import nominal
+from study import nominal, tasks
 from study.tasks import StudyWork
 from tests.independent_bodies import double_wishbone
 from tests.independent_measures import Corner
@@ -32,6 +32,13 @@ def on_the_corner(build):
     errors = CHASSIS | {"rack.tie_rod_inner": "{ plus_minus = 1.0 }"}
     found = run_study(corner(build=build), small_study("camber_deg", *RATES, errors=errors))
     return tuple(effects_of(found, measure_no=number) for number in range(1 + len(RATES)))
+
+
+@pytest.fixture(autouse=True, scope="module")
+def few_curves():
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(tasks, "CURVE_BUILDS", 16)
+        yield
 
 
 def ranking_of(found, key, **where):
