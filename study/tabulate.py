@@ -5,12 +5,9 @@ import math
 import numpy as np
 
 from study.measures import KEYS
-from study.methods import SAMPLED, linear, spread
-from study.methods.problem import Problem
-from study.response import TAKES, taken
+from study.linear_model import LinearModel, is_nonlinear
+from study.methods import spread
 from study.tasks import CURVE_POSITIONS, StudyWork
-from study.zone_field import ZoneField
-from study.zones import Zone
 
 QUANTILES = {
     "q005": 0.005,
@@ -49,7 +46,8 @@ class _Stage:
         self.study, self.model, self.method = work.study, work.model, work.study.method
         self.measures = self.study.measures
         tasks = [t for t in work.tasks if t.stage == stage]
-        self.effects_of = outcomes[next(t.number for t in tasks if t.kind == "effects")].values
+        effects = outcomes[next(t.number for t in tasks if t.kind == "effects")].values
+        self.linear = LinearModel(work, stage, effects)
         drawn = [outcomes[t.number] for t in tasks if t.kind == "draws"]
         self.drawn = np.concatenate([o.values for o in drawn], axis=1) if drawn else None
         self.status = np.concatenate([o.status for o in drawn]) if drawn else None
@@ -58,7 +56,6 @@ class _Stage:
         self.sources = [i for i, s in enumerate(self.model.sources) if s.name not in gone]
 
     def fill(self):
-        self._linear()
         self.result = self._analysed() if self.drawn is not None else None
         self._ranking()
         self._stats()
@@ -66,71 +63,6 @@ class _Stage:
             self._demand()
         if self.worst is not None:
             self._worst()
-
-    # --- linear model
-
-    def _linear(self):
-        _, h = linear.steps(self.model.field.sd())
-        self.effects = linear.effects(self.effects_of, h)
-        self.nominal_positions = self.effects_of[:, 0]
-        field, effects, problem = self._with_steps()
-        self.linear_parts = (field, effects, problem)
-        stack = linear.stack(self._measure_effects(effects), field, problem)
-        self.rss, self.shares, self.stack = stack.rss, stack.shares.copy(), stack
-        self.signed = self._measure_effects(self.effects)
-        for i, measure in enumerate(self.measures):
-            if self._is_nonlinear(measure):
-                self._taken(i, measure)
-
-    def _is_nonlinear(self, measure):
-        return measure.over is not None and measure.take != "slope"
-
-    def _measure_effects(self, effects):
-        """Signed effects (M, D); NaN-free zeros stand where `take` is not linear and draws decide."""
-        out = np.zeros((len(self.measures), effects.shape[1]))
-        for i, (measure, rows) in enumerate(zip(self.measures, self.work.position_slices, strict=True)):
-            if not self._is_nonlinear(measure):
-                out[i] = np.nan_to_num(taken(measure, effects[rows]))
-        return out
-
-    def _taken(self, i, measure):
-        rows = self.work.position_slices[i]
-        field, effects, problem = self.linear_parts
-        x = np.array(measure.sweep)
-        part = np.nan_to_num(effects[rows])
-        self.shares[i] = linear.taken_shares(
-            self.nominal_positions[rows],
-            part,
-            field,
-            problem,
-            lambda v: TAKES[measure.take](x, v),
-            seed=self.study.seed,
-        )
-        self.rss[i] = np.nan
-
-    def _with_steps(self):
-        """The zones and effects of the linear model; a stepped adjuster adds ±step/2, in degrees, to its band's source."""
-        field, effects, group = self.model.field, self.effects, self.model.problem.group_of
-        extra_zones, columns, groups = [], [], []
-        hands = self.work.stepless(self.stage) if self.stage == "after" else None
-        for name, hand in hands.hands.items() if hands else ():
-            if not hand.bench.by:
-                continue
-            apart = 1.0 / np.diag(np.linalg.inv(hands.starts[name][1]))
-            for target, step, gain in zip(hand.bench.targets, hand.bench.step, apart, strict=True):
-                if step:
-                    row = hand.bands[name][target]
-                    extra_zones.append(Zone("length", (abs(gain) * step / 2.0,)))
-                    columns.append(row)
-                    groups.append(group[row])
-        if not extra_zones:
-            return field, effects, self.model.problem
-        problem = Problem(np.concatenate((group, groups)), len(self.model.sources), self.model.problem.names)
-        return (
-            ZoneField(field.zones + tuple(extra_zones)),
-            np.concatenate((effects, effects[:, columns]), axis=1),
-            problem,
-        )
 
     # --- sampled methods
 
@@ -188,7 +120,7 @@ class _Stage:
         source = self.model.sources[g]
         row = {
             "stage": self.stage, "measure_no": i, "measure": measure.name, "unit": _unit(measure), "source": source.name,
-            "linear_share": _number(self.shares[i, g]), "verdict": None,
+            "linear_share": _number(self.linear.shares[i, g]), "verdict": None,
         }  # fmt: skip
         for key in ("st", "s1"):
             for end in ("", "_low", "_high"):
@@ -211,7 +143,7 @@ class _Stage:
         axes = list(source.axes)
         if axle and len(source.columns) == 2:
             axes = [f"left {a}" for a in axes] + [f"right {a}" for a in axes]
-        effect = None if self._is_nonlinear(measure) else [float(e) for e in self.signed[i, columns]]
+        effect = None if is_nonlinear(measure) else [float(e) for e in self.linear.signed[i, columns]]
         size = None if effect is None else math.sqrt(sum(e * e for e in effect))
         return {
             "effect": effect,
@@ -259,15 +191,7 @@ class _Stage:
         return self.drawn[:m, rows], (self.status[rows] > 0, ran_out)
 
     def _linear_draws(self):
-        if self.method != "linear":
-            return None
-        field, effects, _ = self.linear_parts
-        drawn = linear.draws(
-            self.nominal_positions, np.nan_to_num(effects), field, seed=self.study.seed, count=LINEAR_DRAWS
-        )
-        return np.stack(
-            [taken(m, drawn[rows]) for m, rows in zip(self.measures, self.work.position_slices, strict=True)]
-        )
+        return self.linear.draws(LINEAR_DRAWS) if self.method == "linear" else None
 
     def _facts_of(self, good, bad):
         if self.stage == self.work.stages[-1]:
@@ -283,19 +207,16 @@ class _Stage:
             ("mean", "sd", "low", "high", *QUANTILES, "good_share", "good_low", "good_high", "builds", "unassembled")
         )
         low, high = measure.limits or (-math.inf, math.inf)
-        nominal = taken(measure, self.nominal_positions[self.work.position_slices[i]][:, None])[0]
-        linear_only = not self._is_nonlinear(measure)
-        worst = (
-            [float(nominal + self.stack.worst_low[i]), float(nominal + self.stack.worst_high[i])]
-            if linear_only
-            else None
-        )
+        nominal, one_slope = self.linear.nominal_of(i), not is_nonlinear(measure)
+        worst = [nominal + self.linear.worst_low[i], nominal + self.linear.worst_high[i]] if one_slope else [math.nan] * 2
         return {
             "stage": self.stage, "measure_no": i, "measure": measure.name, "of": measure.of, "unit": _unit(measure),
             "side": "axle" if KEYS[measure.of].scope_on(self.work.after.solid) == "axle" else measure.side,
             "position": position_text(measure), "nominal": _number(nominal), **none,
             "limit_low": _number(low), "limit_high": _number(high),
-            "rss": _number(self.rss[i]), "worst_low": worst and _number(worst[0]), "worst_high": worst and _number(worst[1]),
+            "rss": _number(self.linear.rss[i]),
+            "worst_low": _number(worst[0]),
+            "worst_high": _number(worst[1]),
         }  # fmt: skip
 
     def _histogram(self, i, values):
@@ -394,5 +315,3 @@ def _number(value):
     value = float(value)
     return value if math.isfinite(value) else None
 
-
-__all__ = ["SAMPLED", "position_text", "tables"]

@@ -11,6 +11,8 @@ from study.measures.registry import measure
 
 def _percent(view, *, share, at_chassis):
     vehicle = view.vehicle
+    if share == 0:
+        return 0.0 * view.pose.t[0]
     if share is None or vehicle.wheelbase_mm is None or vehicle.cg_height_mm is None:
         return view.undefined()
     moved = view.velocity(view.centre, view.bump) if at_chassis else view.contact_fixed

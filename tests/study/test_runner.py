@@ -16,7 +16,7 @@ from study.runner import Watch, enqueue, register, work
 from study.tasks import StudyWork
 from tests.study.small_studies import DEMO, ROOT, TOE, demo, run_study, small_study, study_text
 
-BUILDS_PER_TASK, CURVE_BUILDS = 256, 8
+SMALL = {"BUILDS_PER_TASK": 256, "CURVE_BUILDS": 8, "CURVE_KEYS": {"bump": ("camber_deg",)}}
 KEYS = ("camber_deg", "roll_centre_height_mm")
 # a worker of its own: small tasks, each kept at once, and a pause in each so that there is time to interrupt it
 WORKER = f"""
@@ -24,7 +24,7 @@ import sys, time
 from study import nominal, runner, tasks
 from study.commands import main
 runner.KEEP_S = 0.0
-tasks.BUILDS_PER_TASK, tasks.CURVE_BUILDS = {BUILDS_PER_TASK}, {CURVE_BUILDS}
+vars(tasks).update({SMALL})
 done = tasks.StudyWork.run
 tasks.StudyWork.run = lambda self, task: (time.sleep(0.1), done(self, task))[1]
 sys.argv = ["holdtight", "work", "--threads", "2"]
@@ -39,8 +39,8 @@ def catalog(tmp_path):
 
 @pytest.fixture(autouse=True)
 def small_tasks(monkeypatch):
-    monkeypatch.setattr(tasks, "BUILDS_PER_TASK", BUILDS_PER_TASK)
-    monkeypatch.setattr(tasks, "CURVE_BUILDS", CURVE_BUILDS)
+    for name, value in SMALL.items():
+        monkeypatch.setattr(tasks, name, value)
 
 
 @pytest.fixture
@@ -127,7 +127,7 @@ def test_one_thread_and_two_give_the_same_bits(catalog, method):
 
 def test_the_size_of_chunks_does_not_change_the_numbers(catalog, monkeypatch):
     found = []
-    for size in (BUILDS_PER_TASK, 4096):
+    for size in (100, 4096):
         monkeypatch.setattr(tasks, "BUILDS_PER_TASK", size)
         number = ask(catalog, method="sobol", size=64, alignment=TOE)
         run_all(catalog)
@@ -151,7 +151,7 @@ def test_seed_0_is_kept(catalog):
 def test_builds_really_run_are_counted(catalog):
     number = ask(catalog, method="spread", size=700, alignment=TOE)
     run_all(catalog)
-    effects, curves = 1 + 2 * 13, 1 + CURVE_BUILDS  # four points of three scalars and one band
+    effects, curves = 1 + 2 * 13, 1 + SMALL["CURVE_BUILDS"]  # four points of three scalars and one band
     assert tables_of(catalog, number)["study"][0]["builds"] == 2 * (700 + effects) + curves
     assert job(catalog, number).done == job(catalog, number).total
 
@@ -161,7 +161,7 @@ def test_a_study_killed_twice_ends_with_the_bits_of_one_that_was_not(catalog, wo
     number = ask(catalog, **asked)
     for end, state in ((signal.SIGINT, "queued"), (signal.SIGKILL, "running")):
         process, before = worker(), job(catalog, number).done
-        wait_for(lambda before=before: job(catalog, number).done > before + BUILDS_PER_TASK, process=process)
+        wait_for(lambda before=before: job(catalog, number).done > before + 256, process=process)
         process.send_signal(end)
         process.communicate(timeout=60)
         assert process.returncode == (1 if end == signal.SIGINT else -signal.SIGKILL)
