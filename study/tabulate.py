@@ -4,8 +4,8 @@ import math
 
 import numpy as np
 
-from study.measures import KEYS
 from study.linear_model import LinearModel, is_nonlinear
+from study.measures import KEYS
 from study.methods import spread
 from study.tasks import CURVE_POSITIONS, StudyWork
 
