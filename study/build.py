@@ -97,6 +97,8 @@ def build_model(corners: dict[str, Corner], study) -> BuildModel:
     for feature in features:
         if feature.name in wanted:
             maker.add(feature, wanted[feature.name])
+    for jig in study.jigs:
+        maker.add_jig(jig, corners)
     for adjuster in study.alignment or ():
         maker.add_band(adjuster)
     perfect = tuple(f.name for f in features if f.name not in wanted)
@@ -144,6 +146,28 @@ class _Collector:
             mirror = np.diag([1.0, -1.0, 1.0]) if mount and hand == "right" else None
             self.effects[hand].append(Effect(target, source.of_hand(hand), mirror))
 
+    def add_jig(self, jig, corners):
+        """A rigid shift and turn about the group's centroid that its pivots share, besides their own errors."""
+        pivots = [self._pivot(jig, name) for name in jig.pivots]
+        for name, zone, unit in ((f"jig.{jig.name}", jig.shift, "mm"), (f"jig.{jig.name}.turn", jig.rotation, "deg")):
+            if zone is None:
+                continue
+            columns = self._columns(zone, len(self.hands))
+            source = Source(name, "jig", unit, ("x", "y", "z"), zone, columns, self.hands)
+            self.sources.append(source)
+            for hand, corner in corners.items():
+                places = np.stack([corner.features[pivot].nominal for pivot in pivots])
+                for pivot, lever in zip(pivots, places - places.mean(axis=0), strict=True):
+                    matrix = np.eye(3) if unit == "mm" else np.radians(_turning(lever))
+                    self.effects[hand].append(Effect(pivot, source.of_hand(hand), matrix))
+
+    def _pivot(self, jig, name):
+        feature = self.left.features.get(name)
+        if feature is None or feature.kind != "point" or not name.startswith("chassis."):
+            known = [n for n, f in self.left.features.items() if n.startswith("chassis.") and f.kind == "point"]
+            raise BuildError(f'jigs.{jig.name}: pivots names "{name}", which is no chassis pivot; {patterns.near(name, known)}')
+        return name
+
     def add_band(self, adjuster):
         hands = HANDS if self.left.solid else self.hands
         columns = self._columns(adjuster.band, len(hands))
@@ -154,6 +178,12 @@ class _Collector:
         self.sources.append(source)
         for hand in HANDS:
             self.bands[hand][adjuster.target] = source.of_hand(hand)[0]
+
+
+def _turning(lever):
+    """Matrix (3, 3) of θ → θ × lever."""
+    x, y, z = lever
+    return np.array([[0.0, z, -y], [-z, 0.0, x], [y, -x, 0.0]])
 
 
 def built_features(corner: Corner, effects, errors: np.ndarray, extra=()) -> dict[str, np.ndarray]:

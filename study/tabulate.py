@@ -52,6 +52,7 @@ class _Stage:
         self.drawn = np.concatenate([o.values for o in drawn], axis=1) if drawn else None
         self.status = np.concatenate([o.status for o in drawn]) if drawn else None
         self.worst = next((outcomes[t.number] for t in tasks if t.kind == "worst"), None)
+        self.lots = next((outcomes[t.number] for t in tasks if t.kind == "lots"), None)
         gone = {"alignment.toe", "alignment.camber", "alignment.caster"} if stage == "before" else set()
         self.sources = [i for i, s in enumerate(self.model.sources) if s.name not in gone]
 
@@ -200,7 +201,18 @@ class _Stage:
                 "good_high": None if good is None else good.high,
             }  # fmt: skip
             if good is not None and self.study.cars:
-                self.facts["all_cars"] = spread.all_cars(good.share, self.study.cars)
+                self.facts["all_cars"] = self._all_cars(good)
+
+    def _all_cars(self, good):
+        """Chance that all cars of the study are inside: share^N, or the share of lots where jigs are shared."""
+        if self.lots is None:
+            return spread.all_cars(good.share, self.study.cars)
+        m, a = len(self.measures), (self.lots.values.shape[0] - len(self.measures)) // 2
+        limits = np.array([measure.limits or (-np.inf, np.inf) for measure in self.measures])
+        values = self.lots.values[:m]
+        inside = ((values >= limits[:, :1]) & (values <= limits[:, 1:])) | ~np.isfinite(limits).any(axis=1)[:, None]
+        sound = (self.lots.status == 0) & ~(self.lots.values[m + a :] > 0).any(axis=0)
+        return float((inside.all(axis=0) & sound).reshape(-1, self.study.cars).all(axis=1).mean())
 
     def _stats_row(self, i, measure):
         none = dict.fromkeys(

@@ -1,7 +1,8 @@
 """The work of a study cut into tasks, each a pure function of plain data: what threads run and a kill may interrupt.
 
 A task belongs to a stage and has a kind: "effects" (the batch of central differences about the drawing), "draws" (some
-blocks of the method's sample), "curves" (builds along bump, roll and rack), "worst" (the search for the worst build).
+blocks of the method's sample), "curves" (builds along bump, roll and rack), "worst" (the search for the worst build),
+"lots" (whole lots of cars, each lot built in the same jigs).
 Its outcome is one array (rows, builds) and a status (builds,).
 """
 
@@ -19,6 +20,7 @@ from study.study_measures import Measure
 
 BUILDS_PER_TASK = 4096
 CURVE_BUILDS = 256
+LOTS, LOT_BUILDS = 256, 65_536  # as many lots as the builds allow, LOTS at the most and 16 at the least
 CURVE_KEYS = {
     "bump": ("toe_deg", "camber_deg", "roll_centre_height_mm"),
     "roll": ("toe_deg", "camber_deg"),
@@ -79,8 +81,18 @@ class StudyWork:
                 cuts.append(("worst", 0, 1))
             if stage == self.stages[-1]:
                 cuts.append(("curves", 0, 1))
+                cuts += [("lots", 0, 1)] if self.lots else []
             found += [(stage, *cut) for cut in cuts]
         return tuple(Task(i, *task) for i, task in enumerate(found))
+
+    @property
+    def lots(self) -> int:
+        """How many lots of `cars` cars are built to tell the chance that a whole lot is good; 0 where no jig is shared."""
+        shared = any(jig.varies == "once" for jig in self.study.jigs)
+        limited = any(measure.limits for measure in self.study.measures)
+        if not (shared and limited and self.study.cars):
+            return 0
+        return max(16, min(LOTS, LOT_BUILDS // self.study.cars))
 
     def _cuts(self):
         block = self.method.block(self.model.problem)
@@ -94,6 +106,8 @@ class StudyWork:
             return task.count * self.method.block(self.model.problem)
         if task.kind == "curves":
             return CURVE_BUILDS + 1
+        if task.kind == "lots":
+            return self.lots * self.study.cars
         return 1 + 2 * self.model.scalars
 
     def first_build(self, task: Task) -> int:
@@ -128,6 +142,18 @@ class StudyWork:
         )
         rule = self.model.field.walk if getattr(self.method, "WALKS", False) else self.model.field.to_errors
         found = self.response(task.stage).evaluate(rule(unit.T))
+        return Outcome(np.concatenate((found.values, found.settings, found.ran_out)), found.status)
+
+    def _run_lots(self, task):
+        """Values and stops of lots × cars builds; the scalars of jigs that are made once are alike within a lot."""
+        cars, scalars = self.study.cars, Problem(np.zeros(self.model.scalars, int), 1)
+        size = self.lots * cars
+        unit = spread.draw(scalars, size=size, seed=self.study.seed + 2, first=0, count=size).T
+        once = {f"jig.{jig.name}{tail}" for jig in self.study.jigs if jig.varies == "once" for tail in ("", ".turn")}
+        for source in self.model.sources:
+            for rows in source.columns if source.name in once else ():
+                unit[list(rows)] = np.repeat(unit[list(rows), ::cars], cars, axis=1)
+        found = self.response(task.stage).evaluate(self.model.field.to_errors(unit))
         return Outcome(np.concatenate((found.values, found.settings, found.ran_out)), found.status)
 
     def _run_worst(self, task):
