@@ -4,10 +4,11 @@ import hashlib
 import json
 import math
 from collections.abc import Mapping
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, field
 from types import MappingProxyType
 
 Point = tuple[float, float, float]
+NOT_CONTENT = ("ignored_points", "points_text")
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,7 +60,9 @@ class Geometry:
     """A validated geometry. Both sides are always filled, the mirror image where only one was given.
 
     On a solid axle both sides hold all link points of the axle; the wheels and spring points differ.
-    Points of links are named NAME_inner and NAME_outer.
+    Points of links are named NAME_inner and NAME_outer. shop_names: the shop's own name of a point (also of
+    wheel_centre; of the other side with its prefix, right.NAME) where it differs; ignored_points: rows of the points
+    file that were left out; points_text: that file as given, "" without one.
     """
 
     name: str
@@ -79,6 +82,9 @@ class Geometry:
     datums: str
     text: str
     content_hash: str
+    shop_names: Mapping[str, str] = field(default_factory=lambda: MappingProxyType({}))
+    ignored_points: tuple[str, ...] = ()
+    points_text: str = ""
 
     def ground_mm(self) -> float:
         """z (mm) of the design road plane."""
@@ -94,7 +100,9 @@ def to_record(geometry: Geometry) -> dict:
     }
     record |= {"steer_link": geometry.steer_link, "spring_on": geometry.spring_on, "datums": geometry.datums}
     record |= {"left": _side_record(geometry.left), "right": _side_record(geometry.right)}
-    return record | {"arms": arms, "links": list(geometry.links), "vehicle": vehicle}
+    record |= {"arms": arms, "links": list(geometry.links), "vehicle": vehicle}
+    record |= {"shop_names": dict(geometry.shop_names), "ignored_points": list(geometry.ignored_points)}
+    return record | {"points_text": geometry.points_text}
 
 
 def from_record(record: Mapping, *, text: str) -> Geometry:
@@ -106,13 +114,21 @@ def from_record(record: Mapping, *, text: str) -> Geometry:
         "arms": MappingProxyType({name: Arm(**arm) for name, arm in record["arms"].items()}),
         "links": tuple(record["links"]),
         "vehicle": Vehicle(**record["vehicle"]),
+        "shop_names": MappingProxyType(dict(record.get("shop_names", {}))),
+        "ignored_points": tuple(record.get("ignored_points", ())),
     }
     return Geometry(**plain, text=text, content_hash=content_hash(record))
 
 
 def content_hash(record: Mapping) -> str:
-    """sha256 (hex) over the canonical JSON of a record: spacing and comments of the file do not count."""
-    canonical = json.dumps(record, sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
+    """sha256 (hex) over the canonical JSON of a record: spacing and comments of the file do not count.
+
+    Nor does a points file beyond its values and names; without shop names the hash is that of records from before them.
+    """
+    content = {key: value for key, value in record.items() if key not in NOT_CONTENT}
+    if not content.get("shop_names"):
+        content.pop("shop_names", None)
+    canonical = json.dumps(content, sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
     return hashlib.sha256(canonical.encode("utf-8", "surrogatepass")).hexdigest()
 
 

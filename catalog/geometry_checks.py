@@ -4,17 +4,19 @@ import re
 
 from catalog.geometry_models import GeometryTable
 from catalog.linkages import LINKAGES, SPRING_POINTS, Linkage
+from catalog.points_file import LINK_NAME, GivenPoints
 from catalog.toml_text import near, refuse, shown
 
+MOST_LETTERS = 100
 RESERVED_LINKS = ("chassis", "rack", "upright", "axle", "arm", "alignment", "spring")
 
 
-def check_names(table: GeometryTable, *, source: str) -> None:
-    """Raise GeometryFileError unless names, points and links are those of the linkage."""
+def check_names(table: GeometryTable, *, given: GivenPoints, source: str) -> None:
+    """Raise GeometryFileError unless names, points and links are those of the linkage; given: of its points file."""
     linkage = LINKAGES[table.linkage]
     _check_name(table.name, source)
-    _check_links(table, linkage, source)
-    _check_points(table, linkage, source)
+    _check_links(table, linkage, given, source)
+    _check_points(table, linkage, given, source)
     _check_spring(table, linkage, source)
     _check_other_side(table, linkage, source)
     _check_steering(table, linkage, source)
@@ -27,17 +29,17 @@ def check_names(table: GeometryTable, *, source: str) -> None:
 
 
 def _check_name(name: str, source: str) -> None:
-    fine = name == name.strip() and 1 <= len(name) <= 100 and name.isprintable()
+    fine = name == name.strip() and 1 <= len(name) <= MOST_LETTERS and name.isprintable()
     if not fine or re.search(r"[@/\\]", name):
         refuse(
             source,
             f"name = {shown(name)}",
-            "must be 1 to 100 printable characters without @, / or \\",
+            f"must be 1 to {MOST_LETTERS} printable characters without @, / or \\",
             "rename it.",
         )
 
 
-def _check_links(table: GeometryTable, linkage: Linkage, source: str) -> None:
+def _check_links(table: GeometryTable, linkage: Linkage, given: GivenPoints, source: str) -> None:
     count = len(table.links)
     if count and not linkage.n_links:
         refuse(source, "links", f"is not taken by linkage {table.linkage!r}", "give its points in [points].")
@@ -49,17 +51,20 @@ def _check_links(table: GeometryTable, linkage: Linkage, source: str) -> None:
             "links",
             f"has {count} links ({names}): {table.linkage} needs exactly {linkage.n_links},"
             f" the linkage is {which} ({linkage.count_rule})",
-            _count_remedy(linkage),
+            _count_remedy(linkage) + _left_out(given),
         )
-    for name in table.links:
-        if not re.fullmatch(r"[A-Za-z][A-Za-z0-9_-]*", name) or name in RESERVED_LINKS:
+    for name, link in table.links.items():
+        if not LINK_NAME.fullmatch(name) or name in RESERVED_LINKS or len(name) > MOST_LETTERS:
             refuse(
                 source,
                 f"links.{name}",
-                "must start with a letter, hold only letters, digits, _ and -, and be none of "
+                f"must start with a letter, hold at most {MOST_LETTERS} letters, digits, _ and -, and be none of "
                 + ", ".join(RESERVED_LINKS),
                 "rename the link.",
             )
+        for end in ("inner", "outer"):
+            if getattr(link, end) is None:
+                refuse(source, f"links.{name}.{end}", "is missing", "add it." + _left_out(given))
 
 
 def _count_remedy(linkage: Linkage) -> str:
@@ -68,7 +73,15 @@ def _count_remedy(linkage: Linkage) -> str:
     return "count each arm with two chassis pivots as two links, the tie rod as one."
 
 
-def _check_points(table: GeometryTable, linkage: Linkage, source: str) -> None:
+def _left_out(given: GivenPoints) -> str:
+    """Rows of the points file that nothing names: one of them may be what is missing."""
+    if not given.ignored:
+        return ""
+    more = f" and {len(given.ignored) - 6} more" if len(given.ignored) > 6 else ""
+    return f" Rows of the points file left out: {', '.join(shown(name) for name in given.ignored[:6])}{more}."
+
+
+def _check_points(table: GeometryTable, linkage: Linkage, given: GivenPoints, source: str) -> None:
     for name in table.points:
         if name not in linkage.allowed_points:
             hint = near(name, linkage.allowed_points)
@@ -77,7 +90,10 @@ def _check_points(table: GeometryTable, linkage: Linkage, source: str) -> None:
     missing = [name for name in linkage.points if name not in table.points]
     if missing:
         rule = f"is missing: {table.linkage} needs {', '.join(linkage.points)} ({linkage.count_rule})"
-        refuse(source, ", ".join(f"points.{name}" for name in missing), rule, "add it in [points].")
+        hint = "add it in [points]." + _left_out(given)
+        refuse(source, ", ".join(f"points.{name}" for name in missing), rule, hint)
+    if table.wheel.centre is None:
+        refuse(source, "wheel.centre", "is missing", "add it." + _left_out(given))
 
 
 def _check_spring(table: GeometryTable, linkage: Linkage, source: str) -> None:

@@ -21,24 +21,29 @@ from catalog.geometry_checks import check_names
 from catalog.geometry_models import GeometryTable, WheelTable
 from catalog.geometry_sizes import check_sizes
 from catalog.linkages import LINKAGES
+from catalog.points_file import GivenPoints, with_points_file
 from catalog.toml_text import GeometryFileError, read_text, validated
 
 
 def read_geometry(path: Path) -> Geometry:
-    """Read and check a geometry file. Raises GeometryFileError with file, key, value, rule and remedy."""
-    return parse_geometry(read_text(path), source=path.name)
+    """Read and check a geometry file, and the points file that it may name.
+
+    Raises GeometryFileError with file, key, value, rule and remedy.
+    """
+    return parse_geometry(read_text(path), source=path.name, folder=path.parent)
 
 
-def parse_geometry(text: str, *, source: str) -> Geometry:
-    """The geometry of a file's text; source names the file in errors."""
+def parse_geometry(text: str, *, source: str, folder: Path | None = None) -> Geometry:
+    """The geometry of a file's text. source: names the file in errors; folder: where a points file is looked for."""
     text = text.removeprefix("\ufeff")
     table = validated(GeometryTable, text, source=source)
-    check_names(table, source=source)
+    table, from_csv = with_points_file(table, folder=folder, source=source)
+    check_names(table, given=from_csv, source=source)
     matrix = _matrix(table, source=source)
     given = _given_side(table, matrix)
     other = _other_side(table, given, matrix)
-    check_sizes(table, given=given, other=other, source=source)
-    geometry = _assemble(table, given=given, other=other, text=text)
+    check_sizes(table, given=given, other=other, source=source, from_csv=from_csv)
+    geometry = _assemble(table, given=given, other=other, text=text, from_csv=from_csv)
     return from_record(json.loads(json.dumps(to_record(geometry))), text=text)
 
 
@@ -106,7 +111,7 @@ def _other_wheel(table: GeometryTable, given: Wheel, matrix: Matrix) -> Wheel:
     return replace(wheel, **{key: value + 0.0 for key, value in angles.items() if value is not None})
 
 
-def _assemble(table: GeometryTable, *, given: Side, other: Side, text: str) -> Geometry:
+def _assemble(table: GeometryTable, *, given: Side, other: Side, text: str, from_csv: GivenPoints) -> Geometry:
     linkage = LINKAGES[table.linkage]
     left, right = (given, other) if table.side == "left" else (other, given)
     return Geometry(
@@ -127,6 +132,9 @@ def _assemble(table: GeometryTable, *, given: Side, other: Side, text: str) -> G
         datums=_datums(table.datums),
         text=text,
         content_hash="",
+        shop_names=from_csv.shop_names,
+        ignored_points=from_csv.ignored,
+        points_text=from_csv.text,
     )
 
 

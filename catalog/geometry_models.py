@@ -21,10 +21,10 @@ class Table(BaseModel):
 
 
 class LinkTable(Table):
-    """One link: its chassis point and its upright or axle point."""
+    """One link: its chassis point and its upright or axle point; each here or in the points file."""
 
-    inner: Position = Field(title="chassis point")
-    outer: Position = Field(title="upright or axle point")
+    inner: Position | None = Field(None, title="chassis point")
+    outer: Position | None = Field(None, title="upright or axle point")
 
 
 class OtherLinkTable(Table):
@@ -37,7 +37,7 @@ class OtherLinkTable(Table):
 class WheelTable(Table):
     """The wheel of the given side at design."""
 
-    centre: Position = Field(title="wheel centre")
+    centre: Position | None = Field(None, title="wheel centre", description="Here or in the points file")
     loaded_radius: Positive = Field(description="Wheel centre to road along the wheel, in the file's units")
     camber_deg: SteepAngle = Field(0.0, description="Degrees; positive leans the top outboard")
     toe_deg: SteepAngle = Field(0.0, description="Degrees; positive toes in")
@@ -110,6 +110,13 @@ class GeometryTable(Table):
     steer_link: str | None = Field(None, description="Five-link: the name of the toe link")
     spring_on: Literal["upright", "axle", "lower_arm"] | None = Field(
         None, description="Which part spring_outer belongs to; without it the upright or axle"
+    )
+    points_file: str | None = Field(None, description="A CSV (name, x, y, z) beside this file with points")
+    points_map: dict[str, str] = Field(
+        default_factory=dict, description="Name in the points file = name of the point here"
+    )
+    points_ignore: list[str] = Field(
+        default_factory=list, description="Rows of the points file to leave out although they bear names known here"
     )
     points: dict[str, Position] = Field(default_factory=dict, json_schema_extra=_point_names)
     links: dict[str, LinkTable] = Field(

@@ -12,7 +12,7 @@ if TYPE_CHECKING:
     import numpy as np
     from duckdb import DuckDBPyConnection
 
-TABLES = ("ranking", "stats", "histogram", "curves", "demand", "worst", "correlations", "failures")
+TABLES = ("ranking", "stats", "histogram", "curves", "demand", "worst", "correlations", "failures", "verdicts")
 STUDY_COLUMNS = ("id", "title", "geometry", "method", "size", "seed", "sides", "state", "text")
 Tables = Mapping[str, Sequence[Mapping[str, Any]]]
 

@@ -15,6 +15,7 @@ MAX_BYTES = 1_000_000
 MAX_DEPTH = 12
 MAX_KEY_PARTS = 200
 SHOWN_PROBLEMS = 3
+MOST_LETTERS = 1000
 WANTED_TYPES = {
     "float_type": "a number",
     "int_type": "a whole number",
@@ -77,7 +78,7 @@ def validated(
         return model.model_validate(document)
     except ValidationError as found:
         problems = found.errors(include_url=False, include_context=True)
-        lines = [f"{source}: {_line(problem, model)}" for problem in problems[:SHOWN_PROBLEMS]]
+        lines = [one_line(f"{source}: {_line(problem, model)}") for problem in problems[:SHOWN_PROBLEMS]]
         if len(problems) > SHOWN_PROBLEMS:
             lines[-1] += f" ({len(problems) - SHOWN_PROBLEMS} more)"
         raise error("\n".join(lines)) from None
@@ -101,9 +102,16 @@ def shown(value: object) -> str:
     return text if len(text) <= 70 else text[:67] + "..."
 
 
+def one_line(text: str) -> str:
+    """A text that may hold names out of a file, without line ends and other marks that do not print, and not endless."""
+    plain = "".join(mark if mark.isprintable() else repr(mark)[1:-1] for mark in text)
+    return plain if len(plain) <= MOST_LETTERS else plain[: MOST_LETTERS - 3] + "..."
+
+
 def refuse(source: str, key: str, problem: str, remedy: str) -> NoReturn:
     """Raise GeometryFileError: which file and key (with the value given), what is wrong, what to do."""
-    raise GeometryFileError(f"{source}: {key} {problem}; {remedy}")
+    given = key if len(key) <= MOST_LETTERS // 2 else key[: MOST_LETTERS // 2 - 3] + "..."
+    raise GeometryFileError(one_line(f"{source}: {given} {problem}; {remedy}"))
 
 
 def _check_length(n_bytes: int, *, source: str, error: type[InputError]) -> None:

@@ -2,8 +2,9 @@
 
 import tomllib
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
+from types import MappingProxyType
 from typing import Any
 
 from pydantic import ValidationError
@@ -57,7 +58,8 @@ class Jig:
 class Study:
     """A study as asked for.
 
-    `errors`: (pattern, zone); `alignment`: in the workshop's order, None when nothing is re-set.
+    `errors`: (pattern, zone); `alignment`: in the workshop's order, None when nothing is re-set; `ladder`: zone of the
+    next looser process by the name of a process.
     """
 
     title: str
@@ -73,6 +75,7 @@ class Study:
     wanted_share: float = 0.95
     cars: int | None = None
     jigs: tuple[Jig, ...] = ()
+    ladder: Mapping[str, Zone] = field(default_factory=lambda: MappingProxyType({}))
 
 
 def read_study(path: Path, *, processes: Processes | None = None) -> Study:

@@ -8,6 +8,8 @@ from study.linear_model import LinearModel, is_nonlinear
 from study.measures import KEYS
 from study.methods import spread
 from study.tasks import CURVE_POSITIONS, StudyWork
+from study.verdicts import AS_DRAWN, HOLD, Share, looser, open_together, verdict_of
+from study.zone_words import zone_text
 
 QUANTILES = {
     "q005": 0.005,
@@ -21,16 +23,18 @@ QUANTILES = {
     "q995": 0.995,
 }
 CURVE_QUANTILES = {k: QUANTILES[k] for k in ("q05", "q25", "q50", "q75", "q95")}
+TABLES = ("ranking", "stats", "histogram", "curves", "demand", "worst", "correlations", "failures", "verdicts")
 BINS = 40
 LINEAR_DRAWS = 4096
 
 
 def tables(work: StudyWork, outcomes: dict) -> tuple[dict[str, list[dict]], dict]:
     """(result tables, facts of the run) from the outcomes by task number."""
-    out = {k: [] for k in ("ranking", "stats", "histogram", "curves", "demand", "worst", "correlations", "failures")}
+    out = {k: [] for k in TABLES}
     facts = {"builds": 0, "dropped_blocks": 0, "unassembled": 0, "withheld": False, "notes": []}
     for stage in work.stages:
         _Stage(work, stage, outcomes, out, facts).fill()
+    _verdicts(work, outcomes, out, facts)
     curves = next(task for task in work.tasks if task.kind == "curves")
     out["curves"] = _curves(work, curves, outcomes[curves.number])
     facts["builds"] += sum(len(o.status) for t, o in ((t, outcomes[t.number]) for t in work.tasks) if t.kind != "worst")
@@ -176,6 +180,7 @@ class _Stage:
                     "good_share": float(good.measure_share[i]),
                     "good_low": float(good.measure_low[i]),
                     "good_high": float(good.measure_high[i]),
+                    "lost_share": float(good.lost[i]),
                 }
             self.out["stats"].append(row)
         if summary is not None and self.method == "spread":
@@ -201,22 +206,24 @@ class _Stage:
                 "good_high": None if good is None else good.high,
             }  # fmt: skip
             if good is not None and self.study.cars:
-                self.facts["all_cars"] = self._all_cars(good)
+                chances = self._all_cars(good)
+                self.facts |= dict(zip(("all_cars", "all_cars_low", "all_cars_high"), chances, strict=True))
 
     def _all_cars(self, good):
-        """Chance that all cars of the study are inside: share^N, or the share of lots where jigs are shared."""
+        """Chance that all cars of the study are inside, with its interval: share^N, or that of lots where jigs are shared."""
         if self.lots is None:
-            return spread.all_cars(good.share, self.study.cars)
+            return [spread.all_cars(share, self.study.cars) for share in (good.share, good.low, good.high)]
         m, a = len(self.measures), (self.lots.values.shape[0] - len(self.measures)) // 2
         limits = np.array([measure.limits or (-np.inf, np.inf) for measure in self.measures])
         values = self.lots.values[:m]
         inside = ((values >= limits[:, :1]) & (values <= limits[:, 1:])) | ~np.isfinite(limits).any(axis=1)[:, None]
         sound = (self.lots.status == 0) & ~(self.lots.values[m + a :] > 0).any(axis=0)
-        return float((inside.all(axis=0) & sound).reshape(-1, self.study.cars).all(axis=1).mean())
+        lots = Share.of((inside.all(axis=0) & sound).reshape(-1, self.study.cars).all(axis=1))
+        return [lots.share, lots.low, lots.high]
 
     def _stats_row(self, i, measure):
         none = dict.fromkeys(
-            ("mean", "sd", "low", "high", *QUANTILES, "good_share", "good_low", "good_high", "builds", "unassembled")
+            ("mean", "sd", "low", "high", *QUANTILES, "good_share", "good_low", "good_high", "lost_share", "builds", "unassembled")
         )
         low, high = measure.limits or (-math.inf, math.inf)
         nominal, one_slope = self.linear.nominal_of(i), not is_nonlinear(measure)
@@ -279,6 +286,35 @@ class _Stage:
                             "source": source.name, "axis": axis if hand == "both" else f"{hand} {axis}",
                             "error": _number(rows[i, k, 1 + column]),
                         })  # fmt: skip
+
+
+def _verdicts(work, outcomes, out, facts):
+    """One row a source with its counterfactual share, the verdict in the ranking, and the set that passes together."""
+    tasks = [task for task in work.tasks if task.kind == "verdict"]
+    if not tasks:
+        return
+    wanted, sources = work.study.wanted_share, work.model.sources
+    shares = {task.first: Share.of(outcomes[task.number].values[0] > 0) for task in tasks}
+    drawn = shares.pop(AS_DRAWN)
+    found = {sources[n].name: verdict_of(share, wanted) for n, share in shares.items()}
+    for row in out["ranking"]:
+        row["verdict"] = found[row["source"]] if row["stage"] == work.stages[-1] else None
+    for n, share in shares.items():
+        zone, wider = sources[n].zone, looser(sources[n], work.study.ladder)
+        out["verdicts"].append({
+            "source": sources[n].name, "verdict": found[sources[n].name], "zone": zone_text(zone, sources[n].unit),
+            "process": zone.process, "looser_zone": zone_text(wider, sources[n].unit), "looser_process": wider.process,
+            "good_share": share.share, "good_low": share.low, "good_high": share.high, "as_drawn": drawn.share,
+        })  # fmt: skip
+    together, share, builds = open_together(work, shares)
+    facts["builds"] += builds
+    facts["open_together"] = [sources[n].name for n in together]
+    facts |= {f"open_together_{k}": getattr(share, v, None) for k, v in (("good_share", "share"), ("low", "low"), ("high", "high"))}
+    if verdict_of(drawn, wanted) == HOLD:
+        facts["notes"].append(
+            f"as drawn only {100 * drawn.share:.1f} % of builds are good, {100 * wanted:g} % are wanted: nothing can be opened, "
+            "something has to be closed; see which measure loses most"
+        )
 
 
 def _curves(work, task, outcome):

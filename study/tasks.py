@@ -2,11 +2,11 @@
 
 A task belongs to a stage and has a kind: "effects" (the batch of central differences about the drawing), "draws" (some
 blocks of the method's sample), "curves" (builds along bump, roll and rack), "worst" (the search for the worst build),
-"lots" (whole lots of cars, each lot built in the same jigs).
+"lots" (whole lots of cars, each lot built in the same jigs), "verdict" (one source alone in its next looser process).
 Its outcome is one array (rows, builds) and a status (builds,).
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from types import SimpleNamespace
 
@@ -17,6 +17,7 @@ from study.methods.problem import Problem
 from study.response import Response, requests_of
 from study.stations import PositionError, Spot
 from study.study_measures import Measure
+from study.verdicts import AS_DRAWN, VERDICT_BUILDS, field_with, good_flags, judged, looser
 
 BUILDS_PER_TASK = 4096
 CURVE_BUILDS = 256
@@ -82,6 +83,8 @@ class StudyWork:
             if stage == self.stages[-1]:
                 cuts.append(("curves", 0, 1))
                 cuts += [("lots", 0, 1)] if self.lots else []
+                if judged(self.study):
+                    cuts += [("verdict", n, 1) for n in range(AS_DRAWN, len(self.model.sources))]
             found += [(stage, *cut) for cut in cuts]
         return tuple(Task(i, *task) for i, task in enumerate(found))
 
@@ -108,6 +111,8 @@ class StudyWork:
             return CURVE_BUILDS + 1
         if task.kind == "lots":
             return self.lots * self.study.cars
+        if task.kind == "verdict":
+            return VERDICT_BUILDS
         return 1 + 2 * self.model.scalars
 
     def first_build(self, task: Task) -> int:
@@ -155,6 +160,19 @@ class StudyWork:
                 unit[list(rows)] = np.repeat(unit[list(rows), ::cars], cars, axis=1)
         found = self.response(task.stage).evaluate(self.model.field.to_errors(unit))
         return Outcome(np.concatenate((found.values, found.settings, found.ran_out)), found.status)
+
+    @cached_property
+    def judge(self) -> Response:
+        """The response of the limited measures alone: what good builds are told by."""
+        limited = tuple(measure for measure in self.study.measures if measure.limits)
+        return Response(self.geometry, replace(self.study, measures=limited), stage=self.stages[-1])
+
+    def _run_verdict(self, task):
+        """Flags of good builds (1, N) with one source loosened; AS_DRAWN: with none."""
+        source = None if task.first == AS_DRAWN else self.model.sources[task.first]
+        changed = {} if source is None else {task.first: looser(source, self.study.ladder)}
+        good, status = good_flags(self, field_with(self.model, changed))
+        return Outcome(good[None].astype(float), status)
 
     def _run_worst(self, task):
         response = self.response(task.stage)

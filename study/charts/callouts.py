@@ -39,15 +39,23 @@ class Callout:
 
 
 def place(
-    spots: list[Spot], *, width: float, height: float, left_edge: float, right_edge: float
+    spots: list[Spot],
+    *,
+    width: float,
+    height: float,
+    left_edge: float,
+    right_edge: float,
+    left_height: float | None = None,
 ) -> list[Callout]:
     """Labels in a column that ends at `left_edge` and one that begins at `right_edge`, inside the drawing.
 
     Each spot goes to the nearer column; the columns are then evened out so that both fit the height.
+    `left_height`: where the left column should end so that it covers nothing below, if it can.
     """
     left, right = _share_out(spots, left_edge, right_edge, height)
+    kept = left_height if left_height and sum(spot.height for spot in left) <= left_height - 8 else height
     return [
-        *_column(left, edge=left_edge, align="right", height=height, width=width),
+        *_column(left, edge=left_edge, align="right", height=kept, width=width),
         *_column(right, edge=right_edge, align="left", height=height, width=width),
     ]
 

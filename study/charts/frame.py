@@ -36,8 +36,9 @@ def flat(kind: str, point) -> tuple[float, float]:
 
 
 def sides(geometry: places.Geometry, kind: str) -> list[str]:
-    """The corners that a view shows: both from ahead, the left one otherwise."""
-    return ["left", "right"] if kind == "front" else ["left"]
+    """The corners that a view shows: both from ahead, those of a whole axle from above too, else the left one."""
+    both = kind == "front" or (kind == "top" and places.whole_axle(geometry))
+    return ["left", "right"] if both else ["left"]
 
 
 def frame(geometry: places.Geometry, kind: str) -> Frame:
@@ -46,13 +47,14 @@ def frame(geometry: places.Geometry, kind: str) -> Frame:
     outline = [point for side in shown for point in places.tyre(geometry["wheel"][side])]
     points = [point for side in shown for point in geometry[side].values()]
     points += [places.along_hub(geometry["wheel"][side]) for side in shown]
+    points += [mount for side in shown if (mount := places.rack_mount(geometry, side))]
     drawn = [flat(kind, point) for point in [*outline, *points]]
     low, high = min(h for h, _ in drawn), max(h for h, _ in drawn)
     ground = [geometry["ground_mm"]] if kind != "top" else []
     bottom, top = min([*(v for _, v in drawn), *ground]), max(v for _, v in drawn)
     labelled = [h for h, _ in (flat(kind, point) for point in points)]
-    if kind == "front" and places.two_sides(geometry):
-        labelled = [high]
+    if len(shown) == 2:
+        labelled = [low, high] if places.whole_axle(geometry) else [high]
     scale, left_px = _fit(WIDTHS[kind], _LABEL_PX[kind], (low, high), (min(labelled), max(labelled)))
     most = _MOST_DOWN_PX / (top - bottom)
     if scale > most:

@@ -4,6 +4,10 @@ The geometry is a plain dict:
     name, linkage     text
     left, right       {point name: (x, y, z)}; a solid axle has the same points in both
     lines             [(point_a, point_b, part)]; drawn on both sides
+    bodies            optional [(part, (point, …))]: plates around points
+    rack_point        optional: the point at the end of the rack, else tie_rod_inner
+    hinges            optional [(point_a, point_b)]: lines that a body turns about
+    drawn             optional {"left": {name: (x, y, z)}, "right": …}: points for lines and bodies only
     wheel             {"left": {"centre": (x, y, z), "axis": (x, y, z) pointing outboard, "radius_mm": r},
                       "right": …}
     ground_mm         height of the road plane at design
@@ -47,11 +51,16 @@ def source_place(geometry: Geometry, source: str, side: str = "left") -> Point |
         return tuple(geometry["wheel"][side]["centre"])
     if feature == "hub_axis":
         return along_hub(geometry["wheel"][side])
-    if source == "rack.mount" and "tie_rod_inner" in points:
-        x, y, z = points["tie_rod_inner"]
-        return x, _ON_RACK * y, z
+    if source == "rack.mount":
+        return rack_mount(geometry, side)
     ends = _BETWEEN.get(source, (f"{part}_inner", f"{part}_outer"))
     return _mean([points[end] for end in ends]) if all(end in points for end in ends) else None
+
+
+def rack_mount(geometry: Geometry, side: str) -> Point | None:
+    """Where the rack's mount is drawn, or None without a rack."""
+    end = geometry[side].get(geometry.get("rack_point", "tie_rod_inner"))
+    return None if end is None else (end[0], _ON_RACK * end[1], end[2])
 
 
 def along_hub(wheel: Mapping, share: float = 0.2) -> Point:
@@ -109,9 +118,14 @@ def _turn(a: tuple, b: tuple, c: tuple) -> float:
     return (b[0] - a[0]) * (c[1] - a[1]) - (b[1] - a[1]) * (c[0] - a[0])
 
 
-def two_sides(geometry: Geometry) -> bool:
-    """Whether the right side has points of its own to draw (a solid axle's stand in the left already)."""
-    return dict(geometry["right"]) != dict(geometry["left"])
+def whole_axle(geometry: Geometry) -> bool:
+    """Whether one body carries both wheels: its members are drawn once."""
+    return geometry["linkage"] == "solid-axle"
+
+
+def drawn_points(geometry: Geometry, side: str) -> dict[str, Point]:
+    """All points that lines and bodies of a side may name."""
+    return {**geometry[side], **geometry.get("drawn", {}).get(side, {})}
 
 
 def roll_centre(geometry: Geometry, tables: Mapping) -> tuple[float, float] | None:

@@ -8,30 +8,53 @@ from study.charts.words import number
 
 _FORWARD = {"front": "car's left →", "side": "← forward", "top": "↑ forward"}
 _MEMBER = {"colour": "#777f86", "width": 2.4}
-_SPRING = {"colour": theme.GREY, "width": 1.2, "dash": "dash"}
+_MEMBERS = {
+    "spring": {"colour": theme.GREY, "width": 1.2, "dash": "dash"},
+    "strut": {"colour": "#a3abb1", "width": 6.0},
+    "axle": {"colour": "#b4bbc1", "width": 10.0},
+    "bracket": {"colour": "#b4bbc1", "width": 4.0},
+}
+_BEYOND = 0.18  # a hinge line is drawn this share of its length beyond both ends
 
 
 def scenery(frame: Frame, geometry: places.Geometry, tables: Mapping) -> dict[str, list[dict]]:
-    """The data called tyres, rules, words_left, words_center and words_right."""
+    """The data called tyres, bodies, rules, words_left, words_center and words_right."""
     words = [*_scale_words(frame), *_roll_words(frame, geometry, tables)]
     rules = [
         *_ground(frame, geometry),
         *_links(frame, geometry),
+        *_hinges(frame, geometry),
         *_roll_lines(frame, geometry, tables),
         *_scale_bar(frame),
     ]
-    return {"tyres": _tyres(frame, geometry), "rules": rules} | {
+    outlines = {"tyres": _tyres(frame, geometry), "bodies": _bodies(frame, geometry)}
+    return outlines | {"rules": rules} | {
         f"words_{align}": [word for word in words if word["a"] == align]
         for align in ("left", "center", "right")
     }
 
 
 def _tyres(frame: Frame, geometry: places.Geometry) -> list[dict]:
-    outlines = []
+    wheels = {side: places.tyre(geometry["wheel"][side]) for side in sides(geometry, frame.kind)}
+    return _outlines(frame, wheels)
+
+
+def _bodies(frame: Frame, geometry: places.Geometry) -> list[dict]:
+    found = {}
     for side in sides(geometry, frame.kind):
-        for x, y in places.hull([frame.px(point) for point in places.tyre(geometry["wheel"][side])]):
-            outlines.append({"g": side, "x": x, "y": y, "o": len(outlines)})
-    return outlines
+        points = places.drawn_points(geometry, side)
+        for part, names in geometry.get("bodies", []):
+            found[f"{side} {part}"] = [points[name] for name in names if name in points]
+    return _outlines(frame, found)
+
+
+def _outlines(frame: Frame, found: Mapping) -> list[dict]:
+    """The outline of each group of points as the view sees it, in drawing order."""
+    rows = []
+    for name, points in found.items():
+        for x, y in places.hull([frame.px(point) for point in points]):
+            rows.append({"g": name, "x": x, "y": y, "o": len(rows)})
+    return rows
 
 
 def _rule(a: tuple, b: tuple, *, colour: str = theme.SOFT, width: float = 1.0, dash: str = "solid") -> dict:
@@ -49,21 +72,35 @@ def _ground(frame: Frame, geometry: places.Geometry) -> list[dict]:
 
 
 def _links(frame: Frame, geometry: places.Geometry) -> list[dict]:
-    shown = sides(geometry, frame.kind) if places.two_sides(geometry) else ["left"]
-    return [
-        _rule(
-            frame.px(geometry[side][a]),
-            frame.px(geometry[side][b]),
-            **(_SPRING if part == "spring" else _MEMBER),
-        )
-        for side in shown
-        for a, b, part in geometry["lines"]
-        if a in geometry[side] and b in geometry[side]
-    ]
+    rules = []
+    for side in sides(geometry, frame.kind):
+        points = places.drawn_points(geometry, side)
+        for a, b, part in geometry["lines"]:
+            if a in points and b in points and not _drawn_already(geometry, side, a, b):
+                rules.append(_rule(frame.px(points[a]), frame.px(points[b]), **_MEMBERS.get(part, _MEMBER)))
+    return rules
+
+
+def _drawn_already(geometry: places.Geometry, side: str, a: str, b: str) -> bool:
+    """Whether a member of a whole axle stands in the left side's points already."""
+    if side == "left" or not places.whole_axle(geometry):
+        return False
+    left, right = (places.drawn_points(geometry, hand) for hand in ("left", "right"))
+    return all(left.get(name) == right[name] for name in (a, b))
+
+
+def _hinges(frame: Frame, geometry: places.Geometry) -> list[dict]:
+    rules = []
+    for side in sides(geometry, frame.kind):
+        for a, b in geometry.get("hinges", []):
+            (x, y), (x2, y2) = (frame.px(geometry[side][name]) for name in (a, b))
+            dx, dy = _BEYOND * (x2 - x), _BEYOND * (y2 - y)
+            rules.append(_rule((x - dx, y - dy), (x2 + dx, y2 + dy), width=1.4, dash="dash"))
+    return rules
 
 
 def _roll_lines(frame: Frame, geometry: places.Geometry, tables: Mapping) -> list[dict]:
-    """The roll centre as a cross, with the lines from both contact points to it."""
+    """The roll centre as a cross; of an independent suspension with the lines from both contact points to it."""
     centre = places.roll_centre(geometry, tables) if frame.kind == "front" else None
     if centre is None:
         return []
@@ -71,6 +108,7 @@ def _roll_lines(frame: Frame, geometry: places.Geometry, tables: Mapping) -> lis
     lines = [
         _rule(frame.px(places.contact(geometry["wheel"][side])), (x, y), dash="dash")
         for side in ("left", "right")
+        if not places.whole_axle(geometry)
     ]
     return [
         *lines,

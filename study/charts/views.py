@@ -7,13 +7,14 @@ import altair as alt
 from study.charts import places, theme
 from study.charts import tables as tb
 from study.charts.callouts import Spot, place
-from study.charts.frame import Frame, frame
+from study.charts.frame import Frame, frame, sides
 from study.charts.scenery import scenery
 from study.charts.template import amount, as_chart, end, fill, label, rows, slot, template
 from study.charts.words import source_name
 
 ALL = -1
 _TITLES = {"front": "Front view", "side": "Side view, left side", "top": "Top view, left side"}
+_WHOLE = {"top": "Top view"}
 _LEAST_LABELLED = 0.03
 _LONGEST = {"front": 34, "side": 25, "top": 25}
 
@@ -41,12 +42,13 @@ def view_spec(
     drawn = frame(geometry, kind)
     first = ALL if measure_no is None else measure_no
     wanted = dict.fromkeys([first, *(head["measure_no"] for head in tb.measures(tables) if choose)])
+    above = _above_roll_centre(drawn, geometry, tables)
     data: dict[str, list[dict]] = {"marks": [], "leaders": [], "labels_left": [], "labels_right": []}
     for which in wanted:
-        _add(data, drawn, geometry, strengths(tables, which, stage), which)
+        _add(data, drawn, geometry, strengths(tables, which, stage), which, above)
     families = [name for name in theme.FAMILIES if any(mark["s"] == name for mark in data["marks"])]
     return fill(
-        _template(),
+        _template(bool(families)),
         data=data | scenery(drawn, geometry, tables),
         params={"shown": first},
         slots={
@@ -56,12 +58,17 @@ def view_spec(
             "shapes": [theme.FAMILIES[name][1] for name in families],
             "colours": [theme.FAMILIES[name][0] for name in families],
         },
-        title=_TITLES[kind],
+        title=title(geometry, kind),
         subtitle="" if choose else _subtitle(tables, measure_no, stage),
         description=_description(geometry, tables, kind, first, stage),
         width=drawn.width,
         height=drawn.height,
     )
+
+
+def title(geometry: places.Geometry, kind: str) -> str:
+    """What a view is called."""
+    return (_WHOLE if places.whole_axle(geometry) else {}).get(kind, _TITLES[kind])
 
 
 def strengths(tables: tb.Tables, which: int, stage: str) -> dict[str, tuple[float, tuple[str, ...]]]:
@@ -82,8 +89,8 @@ def strengths(tables: tb.Tables, which: int, stage: str) -> dict[str, tuple[floa
     }
 
 
-def _add(data: dict, drawn: Frame, geometry: places.Geometry, strong: dict, which: int) -> None:
-    """Markers, leaders and labels of one choice of measure."""
+def _add(data: dict, drawn: Frame, geometry: places.Geometry, strong: dict, which: int, above: float | None) -> None:
+    """Markers, leaders and labels of one choice of measure; labels at the car's middle end `above` a height."""
     spots = []
     for source, (value, lines) in sorted(strong.items(), key=lambda item: -item[1][0]):
         point = places.source_place(geometry, source)
@@ -102,9 +109,8 @@ def _add(data: dict, drawn: Frame, geometry: places.Geometry, strong: dict, whic
         )
         if value >= _LEAST_LABELLED and len(spots) < min(10, 2 * int((drawn.height - 30) // 31)):
             spots.append(Spot(source, x, y, _fitted(lines, drawn.kind)))
-    for callout in place(
-        spots, width=drawn.width, height=drawn.height - 46, **_columns(drawn, geometry, spots)
-    ):
+    columns = _columns(drawn, geometry, spots) | {"left_height": above}
+    for callout in place(spots, width=drawn.width, height=drawn.height - 46, **columns):
         (x, y), (x2, y2) = callout.leader()
         data["leaders"].append({"m": which, "x": x, "y": y, "x2": round(x2, 1), "y2": round(y2, 1)})
         data[f"labels_{callout.align}"].append(
@@ -127,28 +133,40 @@ def _fitted(lines: tuple[str, ...], kind: str) -> tuple[str, ...]:
 
 def _columns(drawn: Frame, geometry: places.Geometry, spots: list[Spot]) -> dict[str, float]:
     """Where the label columns stand: outside the points, in front view outside the tyre."""
-    first, last = (
-        min((spot.x for spot in spots), default=0.0),
-        max((spot.x for spot in spots), default=drawn.width),
-    )
-    if drawn.kind == "front" and places.two_sides(geometry):
-        last = max(drawn.px(point)[0] for point in places.tyre(geometry["wheel"]["left"]))
+    first = min((spot.x for spot in spots), default=0.0)
+    last = max((spot.x for spot in spots), default=drawn.width)
+    outer = {
+        side: [drawn.px(point)[0] for point in places.tyre(geometry["wheel"][side])]
+        for side in sides(geometry, drawn.kind)
+    }
+    if len(outer) == 2:
+        last = max(max(xs) for xs in outer.values())
+        first = min(min(xs) for xs in outer.values()) if places.whole_axle(geometry) else first
     return {"left_edge": first - 30.0, "right_edge": last + 26.0}
 
 
+def _above_roll_centre(drawn: Frame, geometry: places.Geometry, tables: tb.Tables) -> float | None:
+    """Where labels at the car's middle have to end so that the roll centre stays in sight."""
+    centre = places.roll_centre(geometry, tables) if drawn.kind == "front" else None
+    return drawn.px((0.0, *centre))[1] - 10.0 if centre and not places.whole_axle(geometry) else None
+
+
 @cache
-def _template() -> dict:
+def _template(has_marks: bool) -> dict:
     x = amount(alt.X, "x", axis=None, scale=alt.Scale(domain=slot("across"), nice=False, zero=False))
     y = amount(alt.Y, "y", axis=None, scale=alt.Scale(domain=slot("down"), nice=False, zero=False))
     ends = {"x": x, "y": y, "x2": end(alt.X2, "x2"), "y2": end(alt.Y2, "y2")}
     dashes = alt.Scale(domain=["solid", "dash"], range=[[1, 0], [5, 4]])
-    legend = alt.Legend(symbolSize=90)
+    legend = alt.Legend(symbolSize=90) if has_marks else None
     shapes = alt.Scale(domain=slot("families"), range=slot("shapes"))
     colours = alt.Scale(domain=slot("families"), range=slot("colours"))
     pick = "datum.m == shown"
     return template(
         alt.Chart(rows("tyres"))
         .mark_line(stroke=theme.GREY, strokeWidth=1, fill="#eef0f1")
+        .encode(x=x, y=y, detail=label(alt.Detail, "g"), order=amount(alt.Order, "o")),
+        alt.Chart(rows("bodies"))
+        .mark_line(stroke="#9aa2a9", strokeWidth=1.2, strokeJoin="round", fill="#d3d8dc", fillOpacity=0.75)
         .encode(x=x, y=y, detail=label(alt.Detail, "g"), order=amount(alt.Order, "o")),
         alt.Chart(rows("rules"))
         .mark_rule(strokeCap="round")
@@ -209,4 +227,4 @@ def _description(geometry: places.Geometry, tables: tb.Tables, kind: str, which:
     first = ", ".join(source_name(source) for source in placed[:3])
     tail = f" Largest markers: {first}." if first else ""
     name = geometry.get("name") or geometry["linkage"]
-    return f"{_TITLES[kind]} of {name}, to scale, at design position.{tail}"
+    return f"{title(geometry, kind)} of {name}, to scale, at design position.{tail}"
