@@ -55,9 +55,13 @@ RANKING_KEYS = (
     "source", "rank", "st", "st_low", "st_high", "s1", "s1_low", "s1_high", "linear_share", "mu_star", "mu_star_low",
     "mu_star_high", "effect_axes", "effect_unit", "effect_per_mm", "tied", "verdict",
 )  # fmt: skip
+FACT_KEYS = (
+    "good_share", "good_low", "good_high", "all_cars", "all_cars_low", "all_cars_high", "open_together",
+    "open_together_good_share", "open_together_low", "open_together_high",
+)  # fmt: skip
 STATS_KEYS = (
     "measure", "of", "side", "position", "unit", "nominal", "mean", "sd", "q025", "q975", "limit_low", "limit_high",
-    "good_share", "good_low", "good_high", "rss", "worst_low", "worst_high",
+    "good_share", "good_low", "good_high", "lost_share", "rss", "worst_low", "worst_high",
 )  # fmt: skip
 
 
@@ -78,9 +82,9 @@ def contract(dossier, stage) -> dict:
         "unassembled": facts["unassembled"],
         "withheld": facts["withheld"],
     }
-    out |= {key: facts[key] if stage == last else None for key in ("good_share", "good_low", "good_high", "all_cars")}
+    out |= {key: facts.get(key) if stage == last else None for key in FACT_KEYS}
     out |= {"measures": measures}
-    return out | {key: dossier.tables[key] for key in ("demand", "failures", "worst", "correlations")}
+    return out | {key: dossier.tables[key] for key in ("verdicts", "demand", "failures", "worst", "correlations")}
 
 
 def print_ranking(dossier, *, stage=None, most=6) -> None:
@@ -97,7 +101,8 @@ def print_ranking(dossier, *, stage=None, most=6) -> None:
         _print_measure(dossier, stage, stats, most)
     _print_failures(dossier, stage)
     _print_demand(dossier)
-    _print_good(facts)
+    _print_verdicts(dossier)
+    _print_good(dossier)
     print(
         "≈ tied with the one above: the draws cannot tell the two apart. Effects are signed, on the drawing's own axes."
     )
@@ -197,12 +202,43 @@ def _print_demand(dossier):
         print_table("\nadjuster demand, mm from the drawing (the shim kit)", columns, rows)
 
 
-def _print_good(facts):
-    if facts.get("good_share") is not None:
-        text = f"{100 * facts['good_share']:.1f} % of builds are inside all limits (95 %: {100 * facts['good_low']:.1f}–{100 * facts['good_high']:.1f})"
-        if facts.get("all_cars") is not None:
-            text += f"; chance that all cars asked for are: {100 * facts['all_cars']:.1f} %"
-        print(text)
+def _print_verdicts(dossier):
+    """What each tolerance may do, the dearest to open first, and the set that passes together."""
+    rows, facts = dossier.tables["verdicts"], dossier.study
+    if not rows:
+        return
+    columns = [("source", "left"), ("as drawn", "left"), ("moved to", "left"), ("good builds then", "right"), ("verdict", "left")]
+    lines = [
+        [r["source"], _made(r["zone"], r["process"]), _made(r["looser_zone"], r["looser_process"]),
+         f"{100 * r['good_share']:.1f} % ({100 * r['good_low']:.1f}–{100 * r['good_high']:.1f})", r["verdict"]]
+        for r in sorted(rows, key=lambda r: r["good_share"])
+    ]  # fmt: skip
+    wanted = f"wanted {100 * dossier.asked.wanted_share:g} %, as drawn {100 * rows[0]['as_drawn']:.1f} %"
+    print_table(f"\nverdicts: one tolerance loosened at a time ({wanted})", columns, lines)
+    if facts.get("open_together"):
+        share = f"{100 * facts['open_together_good_share']:.1f} % ({100 * facts['open_together_low']:.1f}–{100 * facts['open_together_high']:.1f})"
+        print(f"may be opened together, {share} good: {', '.join(facts['open_together'])}")
+    elif any(r["verdict"] == "open" for r in rows):
+        print("no set of these may be opened together")
+
+
+def _made(zone, process):
+    return f"{process}: {zone}" if process else zone
+
+
+def _print_good(dossier):
+    facts = dossier.study
+    if facts.get("good_share") is None:
+        return
+    text = f"\n{100 * facts['good_share']:.1f} % of builds are inside all limits (95 %: {100 * facts['good_low']:.1f}–{100 * facts['good_high']:.1f})"
+    if facts.get("all_cars") is not None:
+        low, high = 100 * facts["all_cars_low"], 100 * facts["all_cars_high"]
+        text += f"; chance that all {dossier.asked.cars} cars are: {100 * facts['all_cars']:.1f} % ({low:.1f}–{high:.1f})"
+    print(text)
+    lost = [r for r in dossier.of_stage("stats", dossier.stages[-1]) if r["lost_share"]]
+    if lost:
+        worst = sorted(lost, key=lambda r: -r["lost_share"])
+        print("lost to: " + ", ".join(f"{clean(r['measure'])} {100 * r['lost_share']:.1f} %" for r in worst))
 
 
 def _over_catalog(store, as_json):
