@@ -119,8 +119,17 @@ def _apply(path: Path, *, since: int, catalog: Path) -> None:
                     f"{catalog}: migration {step.path.name} failed ({first}); the catalog is as it was."
                     " Use the version of the program that wrote it, and report this."
                 ) from problem
+        _load_processes(con)
         refresh_views(con)
         con.execute("CHECKPOINT")
+
+
+def _load_processes(con: Any) -> None:
+    from catalog.processes import load_initial
+
+    con.execute("BEGIN")
+    load_initial(con)
+    con.execute("COMMIT")
 
 
 def _copy(path: Path, copy: Path) -> None:

@@ -113,9 +113,12 @@ def _separator(lines: list[str]) -> str:
 
 
 def _cells(line: str, separator: str, number: int, source: str) -> tuple[str, ...]:
+    opened = line.count('"') % 2 and re.search(rf'(?:^|{separator})\s*"', line)
     try:
-        found = next(csv.reader([line], delimiter=separator, skipinitialspace=True, strict=True))
+        found = next(csv.reader([line], delimiter=separator, skipinitialspace=True))
     except csv.Error:
+        opened = True
+    if opened:
         refuse(source, f"line {number}, {shown(line)}", "has quotes that do not close", "correct the quotes.")
     return tuple(cell.strip() for cell in found)
 

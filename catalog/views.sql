@@ -178,3 +178,109 @@ COMMENT ON COLUMN critical_pivots."mu_star" IS 'mean absolute elementary effect,
 COMMENT ON COLUMN critical_pivots."effect_per_mm" IS 'length of effect, unit of the measure per mm or deg';
 COMMENT ON COLUMN critical_pivots."tied" IS 'not told apart from the one ranked just above';
 COMMENT ON COLUMN critical_pivots."verdict" IS 'hold | watch | open; NULL without limits';
+
+CREATE OR REPLACE VIEW processes AS
+SELECT p.name AS process, p.version, p.retired IS NULL AS in_force, r.from_mm, r.from_included, r.up_to_mm,
+       coalesce(r.zone, p.zone)::VARCHAR AS zone, p.distribution, p.cp, p.truncated, p.jig_cost, p.piece_cost, p.looser,
+       (SELECT string_agg(t.name, ', ' ORDER BY t.name) FROM kept.processes t
+        WHERE t.looser = p.name AND t.retired IS NULL) AS tighter,
+       (SELECT count(DISTINCT k.study_id) FROM kept.study_processes k
+        WHERE k.process = p.name AND k.version = p.version) AS studies,
+       p.source, p.remark, p.created, p.by_whom, p.retired, p.retired_by
+FROM kept.processes p LEFT JOIN kept.process_ranges r ON r.process_id = p.id;
+COMMENT ON VIEW processes IS 'Ways of making a feature: zone, law and costs, a row for each range of nominal dimensions';
+COMMENT ON COLUMN processes.process IS 'name, as study files write it (with @NOMINAL where it goes by nominal dimension)';
+COMMENT ON COLUMN processes.version IS '1, 2, 3 ... within the name';
+COMMENT ON COLUMN processes.in_force IS 'whether studies queued now get this row';
+COMMENT ON COLUMN processes.from_mm IS 'lower edge of the nominal dimensions, mm; NULL where they do not matter';
+COMMENT ON COLUMN processes.from_included IS 'whether the lower edge belongs to the range';
+COMMENT ON COLUMN processes.up_to_mm IS 'upper edge of the nominal dimensions, mm; it belongs to the range';
+COMMENT ON COLUMN processes.zone IS 'keys of the zone as in a study file (mm, deg), as JSON';
+COMMENT ON COLUMN processes.distribution IS 'uniform | normal';
+COMMENT ON COLUMN processes.cp IS 'of a normal distribution: 1 leaves 99.73 % inside the zone';
+COMMENT ON COLUMN processes.truncated IS 'whether what lies outside the zone is rejected';
+COMMENT ON COLUMN processes.jig_cost IS 'cost once, whatever the number of pieces; the shop''s own unit';
+COMMENT ON COLUMN processes.piece_cost IS 'cost of each piece, in the same unit';
+COMMENT ON COLUMN processes.looser IS 'name of the next looser process';
+COMMENT ON COLUMN processes.tighter IS 'names of the processes in force that have this one as their next looser';
+COMMENT ON COLUMN processes.studies IS 'how many studies were queued with this row, as asked for or as looser';
+COMMENT ON COLUMN processes.source IS 'where the zone comes from';
+COMMENT ON COLUMN processes.remark IS 'free text';
+COMMENT ON COLUMN processes.created IS 'when added, UTC';
+COMMENT ON COLUMN processes.by_whom IS 'who added it';
+COMMENT ON COLUMN processes.retired IS 'since when it is not in force any more, UTC';
+COMMENT ON COLUMN processes.retired_by IS 'who retired it';
+
+CREATE OR REPLACE VIEW as_built_points AS
+SELECT b.id AS as_built, g.name AS geometry, r.number AS revision, b.car, m.side, m.point, m.x_mm, m.y_mm, m.z_mm,
+       m.x_mm - n.x_mm AS dx_mm, m.y_mm - n.y_mm AS dy_mm, m.z_mm - n.z_mm AS dz_mm,
+       2 * sqrt((m.x_mm - n.x_mm) ** 2 + (m.y_mm - n.y_mm) ** 2 + (m.z_mm - n.z_mm) ** 2) AS position_mm,
+       b.created, b.by_whom, b.note
+FROM kept.as_built b JOIN kept.as_built_points m ON m.as_built_id = b.id
+JOIN kept.points n ON n.revision_id = b.revision_id AND n.side = m.side AND n.point = m.point
+JOIN kept.revisions r ON r.id = b.revision_id JOIN kept.geometries g ON g.id = r.geometry_id;
+COMMENT ON VIEW as_built_points IS 'Points measured on built cars against the drawing: ISO 8855 axes, car coordinates';
+COMMENT ON COLUMN as_built_points.as_built IS 'number of the measurement';
+COMMENT ON COLUMN as_built_points.geometry IS 'name of the geometry';
+COMMENT ON COLUMN as_built_points.revision IS 'number of the revision that the car was built to';
+COMMENT ON COLUMN as_built_points.car IS 'name of the car';
+COMMENT ON COLUMN as_built_points.side IS 'left | right; left for the links of a solid axle';
+COMMENT ON COLUMN as_built_points.point IS 'name of the point';
+COMMENT ON COLUMN as_built_points.x_mm IS 'measured, mm, forward';
+COMMENT ON COLUMN as_built_points.y_mm IS 'measured, mm, to the left of the centre plane';
+COMMENT ON COLUMN as_built_points.z_mm IS 'measured, mm, up';
+COMMENT ON COLUMN as_built_points.dx_mm IS 'measured minus drawing, mm, forward';
+COMMENT ON COLUMN as_built_points.dy_mm IS 'measured minus drawing, mm, to the left';
+COMMENT ON COLUMN as_built_points.dz_mm IS 'measured minus drawing, mm, up';
+COMMENT ON COLUMN as_built_points.position_mm IS 'actual position: twice the distance from the drawing''s place, mm, to compare with a diameter';
+COMMENT ON COLUMN as_built_points.created IS 'when added, UTC';
+COMMENT ON COLUMN as_built_points.by_whom IS 'who added it';
+COMMENT ON COLUMN as_built_points.note IS 'free text';
+
+CREATE OR REPLACE VIEW releases AS
+WITH newest AS (
+    SELECT r.id, max(r.number) OVER (PARTITION BY r.geometry_id) AS number FROM kept.revisions r
+), issues AS (
+    SELECT k.*, g.name AS geometry_name, r.number AS revision, n.number AS newest_revision,
+           before.issue AS supersedes_issue, after.issue AS superseded_by
+    FROM kept.releases k JOIN kept.revisions r ON r.id = k.revision_id JOIN kept.geometries g ON g.id = r.geometry_id
+    JOIN newest n ON n.id = r.id
+    LEFT JOIN kept.releases before ON before.id = k.supersedes
+    LEFT JOIN kept.releases after ON after.supersedes = k.id
+)
+SELECT i.id AS release, i.drawing, i.issue, i.part, t.place, t.feature, t.shop_name, t.callout, t.zone, t.datums,
+       t.distribution, t.process, t.condition, t.checked, t.verdict, t.figures, t.remark, t.reason, i.by_whom,
+       i.created AS released, i.geometry_name AS geometry, i.revision, i.study_id AS study,
+       i.supersedes_issue AS supersedes, i.superseded_by, i.superseded_by IS NULL AS "current",
+       i.newest_revision > i.revision AS stale, i.newest_revision, i.record_hash
+FROM issues i JOIN kept.release_rows t ON t.release_id = i.id;
+COMMENT ON VIEW releases IS 'Released tolerances: one row a feature of every issue of every drawing';
+COMMENT ON COLUMN releases.release IS 'number of the release';
+COMMENT ON COLUMN releases.drawing IS 'drawing number';
+COMMENT ON COLUMN releases.issue IS 'issue of the drawing';
+COMMENT ON COLUMN releases.part IS 'part that the drawing is of';
+COMMENT ON COLUMN releases.place IS '1, 2, 3 ... as on the note';
+COMMENT ON COLUMN releases.feature IS 'PART.FEATURE';
+COMMENT ON COLUMN releases.shop_name IS 'the shop''s own name of the point, where it differs';
+COMMENT ON COLUMN releases.callout IS 'the tolerance as it stands on the drawing, mm and degrees';
+COMMENT ON COLUMN releases.zone IS 'the zone in words, mm or degrees';
+COMMENT ON COLUMN releases.datums IS 'what it is measured from';
+COMMENT ON COLUMN releases.distribution IS 'law of the errors that the study drew';
+COMMENT ON COLUMN releases.process IS 'process that the zone was taken from, where one is named';
+COMMENT ON COLUMN releases.condition IS 'condition in which it holds: welded, unpainted ...';
+COMMENT ON COLUMN releases.checked IS 'how it is checked';
+COMMENT ON COLUMN releases.verdict IS 'hold | watch | open; NULL without limits';
+COMMENT ON COLUMN releases.figures IS 'the figures behind it, in words';
+COMMENT ON COLUMN releases.remark IS 'what else has to be known of it';
+COMMENT ON COLUMN releases.reason IS 'why it was released so';
+COMMENT ON COLUMN releases.by_whom IS 'who released it';
+COMMENT ON COLUMN releases.released IS 'when, UTC';
+COMMENT ON COLUMN releases.geometry IS 'name of the geometry that was studied';
+COMMENT ON COLUMN releases.revision IS 'number of its revision';
+COMMENT ON COLUMN releases.study IS 'number of the study';
+COMMENT ON COLUMN releases.supersedes IS 'issue that it took the place of';
+COMMENT ON COLUMN releases.superseded_by IS 'issue that took its place';
+COMMENT ON COLUMN releases."current" IS 'whether no later issue took its place';
+COMMENT ON COLUMN releases.stale IS 'whether the geometry has a newer revision than the one that was studied';
+COMMENT ON COLUMN releases.newest_revision IS 'number of the newest revision of that geometry';
+COMMENT ON COLUMN releases.record_hash IS 'sha256 (hex) over the release and its rows';

@@ -127,36 +127,47 @@ def align(bench: Bench, measure, *, goal, start, gains, stepless=False) -> Setti
     n = goal.shape[1]
     state = _State(measure, goal, start.copy(), gains)
     free = np.ones((len(bench.targets), n), bool)
-    ran_out = _set_within_reach(state, free, bench.reach[:, None])
-    stepped = bench.step > 0
-    if stepped.any() and not stepless:
-        state.move_to(_stepped(state.settings, bench))
+    stepped = (bench.step > 0) & (not stepless)
+    stop = _stops(bench, stepped)
+    ran_out = _set_within_reach(state, free, stop, slack=np.where(stepped, bench.step / 2.0, 0.0)[:, None])
+    if stepped.any():
+        state.move_to(_stepped(state.settings, bench, stepped, stop))
         free &= ~stepped[:, None]
-        ran_out |= _set_within_reach(state, free, bench.reach[:, None])
+        ran_out |= _set_within_reach(state, free, stop, slack=np.zeros((len(stop), 1)))
     miss = np.where(free, np.abs(state.miss), 0.0).max(axis=0, initial=0.0)
     status = np.where(miss <= TOLERANCE_DEG, ALIGNED, NOT_ALIGNED)
     return Setting(state.settings, ran_out, status, miss)
 
 
-def _stepped(settings, bench):
+def _stops(bench, stepped):
+    """Where each adjuster ends (A, 1) mm: a stepped one at its last whole step."""
+    reach = np.minimum(bench.reach, 1e9)
+    step = np.where(stepped, bench.step, 1.0)
+    return np.where(stepped, step * np.floor(reach / step + 1e-9), reach)[:, None]
+
+
+def _stepped(settings, bench, stepped, stop):
     """Settings with the stepped adjusters at their nearest multiple within reach."""
-    step = np.where(bench.step > 0, bench.step, 1.0)[:, None]
-    most = np.where(np.isfinite(bench.reach[:, None]), np.floor(bench.reach[:, None] / step + 1e-9), np.inf)
-    count = np.clip(np.round(settings / step), -most, most)
-    return np.where(bench.step[:, None] > 0, count * step, settings)
+    step = np.where(stepped, bench.step, 1.0)[:, None]
+    return np.where(stepped[:, None], np.clip(step * np.round(settings / step), -stop, stop), settings)
 
 
-def _set_within_reach(state, free, reach):
-    """Solve the free adjusters, pin what runs out at its stop (free turns False there), until nothing new runs out."""
+def _set_within_reach(state, free, stop, *, slack):
+    """Solve the free adjusters, pin what runs out at its stop (free turns False there), until nothing new runs out.
+
+    Of several that run out the one furthest beyond is pinned first, since the others may then stay within reach. slack:
+    what lies less than half a step beyond the last step still goes to that step.
+    """
     ran_out = np.zeros_like(free)
     for _ in range(len(free) + 1):
         state.solve(free)
-        beyond = free & (np.abs(state.settings) > reach * (1.0 + 1e-12))
+        over = np.where(free, np.abs(state.settings) - (stop + slack) * (1.0 + 1e-12), 0.0)
+        beyond = (over > 0) & (over == over.max(axis=0))
         if not beyond.any():
             break
         ran_out |= beyond
         free &= ~beyond
-        state.move_to(np.where(beyond, np.sign(state.settings) * np.minimum(reach, 1e9), state.settings))
+        state.move_to(np.where(beyond, np.sign(state.settings) * stop, state.settings))
     return ran_out
 
 

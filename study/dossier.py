@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-from catalog import queue, results, revisions
+from catalog import processes, queue, results, revisions
 from catalog.errors import InputError
 from catalog.store import Catalog
 from study.assembly import corner_of
@@ -48,8 +48,14 @@ def load_dossier(catalog: Catalog, number: int) -> Dossier:
         tables = results.load_results(con, number)
         revision = revisions.by_id(con, job.revision_id)
         geometry, nominal = revisions.load(con, revision), revisions.measures_of(con, revision)
-    asked = parse_study(job.text, source=f"study {number}")
+        asked = kept_study(con, job)
     facts = tables.pop("study")[0] | {"created": job.created, "by": job.by, "finished": job.finished}
     hands = ("left",) if geometry.linkage == "solid-axle" else ("left", "right")
     model = build_model({hand: corner_of(geometry, hand) for hand in hands}, asked)
     return Dossier(facts, asked, geometry, tables, model, nominal)
+
+
+def kept_study(con, job) -> Study:
+    """The study of a job as it was queued: its processes stand for what they stood for then."""
+    kept = processes.of_study(con, job.id)
+    return parse_study(job.text, source=f"study {job.id}", processes=kept, looser=kept.looser)

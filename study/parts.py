@@ -39,7 +39,7 @@ class Parts:
             kind,
             corner.has_rack,
             "spring" if corner.springs and not on_arm else "height",
-            _arm_spring(corner, arm_bores) if on_arm else None,
+            _arm_spring(corner, built, arm_bores) if on_arm else None,
             fits,
         )
 
@@ -122,11 +122,12 @@ def _body_features(corner, built):
     return out
 
 
-def _arm_spring(corner, arm_bores):
+def _arm_spring(corner, built, arm_bores):
     """(built hinge ends of the lower arm, the spring's end in the arm's own hinge frame)."""
     own = np.stack([corner.features[f"chassis.lower_{end}_pivot"].nominal for end in ("front", "rear")], axis=1)
-    joint = corner.features["upright.lower_ball_joint"].nominal + corner.origin
-    local = _in_hinge_frame(own[:, :1], own[:, 1:], joint[:, None], corner.springs[""][1][:, None])
+    joint = corner.features["upright.lower_ball_joint"].nominal[:, None] + corner.origin[:, None]
+    joint = built.get("lower_arm.lower_ball_joint", joint)
+    local = _in_hinge_frame(own[:, :1], own[:, 1:], joint, corner.springs[""][1][:, None])
     return arm_bores["lower_arm"], local
 
 

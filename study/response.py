@@ -71,15 +71,17 @@ class Response:
     """The studied car as a function of its errors.
 
     stage "before" leaves toe, camber and caster as built; "after" sets them. `stepless`: steps of adjusters left out.
+    visits: measures whose positions a build has to reach without being measured there.
     """
 
-    def __init__(self, geometry, study=NO_STUDY, *, stage="after", stepless=False):
+    def __init__(self, geometry, study=NO_STUDY, *, stage="after", stepless=False, visits=()):
         self.geometry, self.study, self.stage, self.stepless = geometry, study, stage, stepless
         self.solid = geometry.linkage == "solid-axle"
         self.alike = self.solid or (study.sides == "mirrored" and geometry.right_is_mirror)
         corners = {hand: corner_of(geometry, hand) for hand in (("left",) if self.alike else HANDS)}
         self.model = build_model(corners, study)
         self.hands = {hand: self._hand(hand, corner) for hand, corner in corners.items()}
+        self.visits = [request for measure in visits for request in requests_of(measure)]
         self._plan([request for measure in study.measures for request in requests_of(measure)])
 
     def _hand(self, hand, corner):
@@ -109,6 +111,10 @@ class Response:
                     held = spot._replace(locked=True)
                     self.rates.setdefault((name, held), set())
                     self.hands[name].station(held)
+        for request in self.visits:
+            for hand in self._hands_of(request):
+                name, spot = self._spot(hand, request)
+                self.rates.setdefault((name, spot), set())
 
     def _scope(self, request):
         return KEYS[request.of].scope_on(self.solid)
@@ -139,6 +145,8 @@ class Response:
                 status = np.maximum(status, setting.status.astype(np.uint8))
             shelf = _Shelf(self, {name: block for name, (block, _) in set_up.items()})
             rows = np.array([shelf.value(request) for request in self.requests]).reshape(len(self.requests), n)
+            for request in self.visits:
+                shelf.visit(request)
             status = np.where(shelf.status(n) > 0, shelf.status(n), status).astype(np.uint8)
             rows[:, status > 0] = np.nan
             values = self._take(rows, n)
@@ -204,6 +212,11 @@ class _Shelf:
             rates = tuple(sorted(self.response.rates[name, spot]))
             self.views[key] = self.response.hands[name].view(self.blocks[name], spot, rates=rates, wheel=hand)
         return self.views[key]
+
+    def visit(self, request):
+        """Put the builds into a position without measuring them there."""
+        for hand in self.response._hands_of(request):
+            self.view(hand, request)
 
     def value(self, request):
         info = KEYS[request.of]

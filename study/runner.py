@@ -13,12 +13,14 @@ from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 
 import numpy as np
+from threadpoolctl import threadpool_limits
 
-from catalog import queue, revisions
+from catalog import processes, queue, revisions
 from catalog.chunks import load_chunk, store_chunk
 from catalog.errors import HoldtightError, WorkError
-from catalog.store import Catalog
-from study.study_file import Study, parse_study
+from catalog.store import Catalog, CatalogMissing
+from study.dossier import kept_study
+from study.study_file import Study, read_study
 from study.tabulate import tables
 from study.tasks import Outcome, StudyWork
 
@@ -50,6 +52,16 @@ def register(catalog: Catalog, geometry, *, by: str, why: str) -> revisions.Revi
         return revisions.register(con, geometry, measures=found, by=by, why=why)
 
 
+def read_asked(catalog: Catalog, path: Path) -> Study:
+    """The study of a file, with the processes of the catalog; without one yet, with those that it will start with."""
+    try:
+        with catalog.read() as con:
+            book = processes.resolver(con)
+    except CatalogMissing:
+        book = processes.initial()
+    return read_study(path, processes=book, looser=book.looser)
+
+
 def geometry_of(catalog: Catalog, study: Study, folder: Path, *, by: str):
     """The revision and the geometry that a study names: a file beside it, or NAME@REVISION of the catalog."""
     if "@" in study.geometry or not study.geometry.endswith(".toml"):
@@ -67,10 +79,12 @@ def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
     revision, geometry = geometry_of(catalog, study, folder, by=by)
     StudyWork(geometry, study)
     with catalog.write() as con:
-        return queue.enqueue(
+        number = queue.enqueue(
             con, text=study.text, title=study.title, method=study.method, size=study.size, seed=study.seed,
             sides=study.sides, revision_id=revision.id, version=program_version(), by=by,
         )  # fmt: skip
+        processes.keep(con, number, study.resolved)
+        return number
 
 
 @dataclass
@@ -123,7 +137,7 @@ class _Run:
         """Do what is not kept yet and finish; False when the study was cancelled or taken over."""
         with self.catalog.read() as con:
             geometry = revisions.load(con, revisions.by_id(con, self.job.revision_id))
-        self.study = parse_study(self.job.text, source=f"study {self.job.id}")
+            self.study = kept_study(con, self.job)
         self.work = StudyWork(geometry, self.study)
         self.total = sum(self.work.builds(task) for task in self.work.tasks)
         outcomes = self._kept()
@@ -143,8 +157,6 @@ class _Run:
 
     def _do(self, tasks, outcomes):
         """Tasks on threads, at most two a thread in flight; the main thread keeps what comes back, in any order."""
-        from threadpoolctl import threadpool_limits
-
         waiting, running, fresh = list(reversed(tasks)), {}, []
         with threadpool_limits(1), ThreadPoolExecutor(self.threads) as pool:
             try:
@@ -210,7 +222,8 @@ class _Run:
             return queue.heartbeat(con, self.job.id, self.worker, total=self.total)
 
     def _finish(self, outcomes):
-        found, facts = tables(self.work, outcomes)
+        with threadpool_limits(1):
+            found, facts = tables(self.work, outcomes)
         facts["seconds"] = time.monotonic() - self.started
         facts["stages"] = list(self.work.stages)
         with self.catalog.write() as con:

@@ -7,6 +7,7 @@ from study.sheet_library import library
 from study.sheet_measures import measures
 from study.sheet_page import Figures, Html, document, join, tag
 from study.sheet_sections import curves, demand, matrix, together, where
+from study.sheet_sides import left_right
 from study.sheet_summary import title_block
 from study.sheet_tables import cautions, notes, statistics, studied, tolerance_table, worst_builds
 
@@ -46,6 +47,7 @@ def render(
         matrix(tables, figures, stage),
         measures(tables, figures),
         curves(tables, figures),
+        left_right(tables, study, geometry, figures, stage),
         demand(tables, figures),
         tolerance_table(list(tolerances), tables, stage),
         worst_builds(tables),

@@ -5,6 +5,7 @@ from study.charts import tables as tb
 from study.charts import theme
 from study.charts.curves import curve_rows
 from study.charts.places import source_place
+from study.charts.views import title as view_title
 from study.charts.words import (
     aligned,
     finite,
@@ -16,11 +17,7 @@ from study.charts.words import (
 )
 from study.sheet_page import Figures, Html, details, esc, join, section, table, tag
 
-_VIEW_WORDS = {
-    "front": "Front view",
-    "side": "Side view, left side, forward is left",
-    "top": "Top view, left side, forward is up",
-}
+_FORWARD = {"front": "", "side": ", forward is left", "top": ", forward is up"}
 
 
 def where(tables: tb.Tables, geometry: dict, figures: Figures, stage: str) -> Html:
@@ -31,12 +28,12 @@ def where(tables: tb.Tables, geometry: dict, figures: Figures, stage: str) -> Ht
     views = [
         figures.add(
             charts.view_spec(geometry, tables, kind, choose=True, stage=stage),
-            words,
+            view_title(geometry, kind) + words,
             fit=False,
             choose=True,
             from_end=kind == "front",
         )
-        for kind, words in _VIEW_WORDS.items()
+        for kind, words in _FORWARD.items()
     ]
     return section(
         "where",

@@ -17,6 +17,7 @@ h2{font-size:20px;margin:0 0 10px;padding-top:26px;position:relative}
 h2::before{content:"";position:absolute;top:12px;left:0;width:64px;height:6px;background:
  repeating-linear-gradient(90deg,var(--ink) 0 1.5px,transparent 1.5px 8px)}
 h3{font-size:16.5px;margin:0}
+.alone{margin-top:24px;font-size:22px}
 p{margin:.5em 0;max-width:76ch}
 a{color:var(--blue)}
 code{font:12px/1.3 ui-monospace,Consolas,"Liberation Mono",monospace;color:var(--soft)}

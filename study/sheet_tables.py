@@ -277,12 +277,6 @@ def _errors(rows: list[dict], most: int = 6) -> str:
 
 def notes(study: dict) -> Html:
     found = list(study.get("notes") or [])
-    if study.get("sides") == "mirrored":
-        found.append(
-            "Left and right errors are mirror images: a measure of the whole axle is that of a car built "
-            "alike on "
-            "both sides."
-        )
     return section("notes", "Notes", tag("ul", *(tag("li", note) for note in found))) if found else Html("")
 
 

@@ -47,7 +47,7 @@ class ZoneEntry(LawEntry):
     length: Number | None = Field(None, description="± mm of a length")
     tilt_deg: Number | None = Field(None, description="half angle of the cone of a direction, degrees")
     shift: NumberOrList | None = Field(None, description="mean of the errors, mm (degrees for a tilt)")
-    process: Word | None = Field(None, description="a process of the catalog, in place of the zone's keys")
+    process: Word | None = Field(None, description="a process of the catalog in place of the zone's keys: NAME, or NAME@NOMINAL (mm) where it goes by nominal dimension")
 
 
 class RideHeightEntry(LawEntry):

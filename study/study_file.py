@@ -1,7 +1,7 @@
 """A study file (TOML) to a frozen Study: what to build, how to align it, what to measure."""
 
 import tomllib
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from types import MappingProxyType
@@ -12,12 +12,12 @@ from pydantic import ValidationError
 from catalog.errors import InputError
 from study import study_measures
 from study.entry_errors import explain
+from study.named_processes import Looser, NamedProcesses, Processes
 from study.study_entries import JigEntry, LawEntry, StudyEntry, ZoneEntry
 from study.study_measures import Measure
 from study.zone_entries import ZoneError, parse_zone
 from study.zones import Zone
 
-Processes = Callable[[str], Mapping[str, Any]]
 _SIZES = {"linear": 4096, "worst": 1, "morris": 64, "sobol": 1024, "spread": 4096}
 _SIZE_BOUNDS = {"morris": (4, 10_000), "sobol": (8, 2**20), "spread": (16, 10_000_000)}
 _MARKS = frozenset("abcdefghijklmnopqrstuvwxyzABCDEFGHIJKLMNOPQRSTUVWXYZ0123456789_-.*")
@@ -59,7 +59,7 @@ class Study:
     """A study as asked for.
 
     `errors`: (pattern, zone); `alignment`: in the workshop's order, None when nothing is re-set; `ladder`: zone of the
-    next looser process by the name of a process.
+    next looser process by the name of a process; `resolved`: what the named processes stood for, as plain data.
     """
 
     title: str
@@ -76,20 +76,26 @@ class Study:
     cars: int | None = None
     jigs: tuple[Jig, ...] = ()
     ladder: Mapping[str, Zone] = field(default_factory=lambda: MappingProxyType({}))
+    resolved: Mapping[str, Mapping[str, Any]] = field(default_factory=lambda: MappingProxyType({}))
 
 
-def read_study(path: Path, *, processes: Processes | None = None) -> Study:
-    """Study of the file; `processes` gives the zone keys of a named process. Raises StudyFileError."""
+def read_study(path: Path, *, processes: Processes | None = None, looser: Looser | None = None) -> Study:
+    """Study of the file; processes and looser as in parse_study. Raises StudyFileError."""
     try:
         text = Path(path).read_text(encoding="utf-8")
     except (OSError, UnicodeDecodeError) as error:
         reason = getattr(error, "strerror", None) or "it is not UTF-8 text"
         raise StudyFileError(f"{path}: cannot be read: {reason}; give the path of a study file") from None
-    return parse_study(text, source=str(path), processes=processes)
+    return parse_study(text, source=str(path), processes=processes, looser=looser)
 
 
-def parse_study(text: str, *, source: str, processes: Processes | None = None) -> Study:
-    """Study of the TOML text; `source` names it in errors. Raises StudyFileError."""
+def parse_study(
+    text: str, *, source: str, processes: Processes | None = None, looser: Looser | None = None
+) -> Study:
+    """Study of the TOML text; `source` names it in errors. Raises StudyFileError.
+
+    processes: name → keys of zone and law; looser: name → name of the next looser process, or None.
+    """
     try:
         entry = StudyEntry.model_validate(tomllib.loads(text))
     except tomllib.TOMLDecodeError as error:
@@ -97,7 +103,7 @@ def parse_study(text: str, *, source: str, processes: Processes | None = None) -
     except ValidationError as error:
         raise StudyFileError(explain(error, StudyEntry, source=source)) from None
     try:
-        return _study(entry, text, processes)
+        return _study(entry, text, NamedProcesses(processes, looser))
     except InputError as error:
         raise StudyFileError(f"{source}: {error}") from None
 
@@ -107,7 +113,9 @@ def json_schema() -> dict[str, Any]:
     return StudyEntry.model_json_schema()
 
 
-def _study(entry: StudyEntry, text: str, processes: Processes | None) -> Study:
+def _study(entry: StudyEntry, text: str, processes: NamedProcesses) -> Study:
+    errors = tuple((_pattern(key), _zone(key, zone, processes)) for key, zone in entry.errors.items())
+    jigs = tuple(_jig(name, jig, processes) for name, jig in entry.jigs.items())
     return Study(
         title=entry.title,
         geometry=entry.geometry,
@@ -115,13 +123,15 @@ def _study(entry: StudyEntry, text: str, processes: Processes | None) -> Study:
         size=_size(entry),
         seed=entry.seed,
         sides=entry.sides,
-        errors=tuple((_pattern(key), _zone(key, zone, processes)) for key, zone in entry.errors.items()),
+        errors=errors,
         alignment=_alignment(entry),
         measures=study_measures.measures(entry.measures, sides=entry.sides),
         text=text,
         wanted_share=entry.wanted_share,
         cars=entry.cars,
-        jigs=tuple(_jig(name, jig, processes) for name, jig in entry.jigs.items()),
+        jigs=jigs,
+        ladder=MappingProxyType(processes.ladder()),
+        resolved=MappingProxyType(processes.resolved),
     )
 
 
@@ -145,23 +155,21 @@ def _pattern(key: str) -> str:
     return key
 
 
-def _zone(key: str, entry: ZoneEntry, processes: Processes | None) -> Zone:
+def _zone(key: str, entry: ZoneEntry, processes: NamedProcesses) -> Zone:
     try:
         return _checked_zone(entry.model_dump(exclude_none=True), processes)
     except InputError as error:
         raise StudyFileError(f'errors."{key}": {error}') from None
 
 
-def _checked_zone(keys: dict[str, Any], processes: Processes | None) -> Zone:
+def _checked_zone(keys: dict[str, Any], processes: NamedProcesses) -> Zone:
     name = keys.pop("process", None)
     if name is None:
         return parse_zone(keys)
     beside = [key for key in keys if key != "shift"]
     if beside:
         raise ZoneError(f'process = "{name}" brings its own zone; leave out {", ".join(beside)}')
-    if processes is None:
-        raise ZoneError(f'process = "{name}" needs a catalog; name one, or write the zone out')
-    return parse_zone({**processes(name), **keys}, process=name)
+    return processes.zone(name, **keys)
 
 
 def _law(entry: LawEntry) -> dict[str, Any]:
@@ -213,7 +221,7 @@ def _adjuster(target: str, entry: Any) -> Adjuster:
     return Adjuster(target, None if ride else entry.by, within, step, reach, band)
 
 
-def _jig(name: str, entry: JigEntry, processes: Processes | None) -> Jig:
+def _jig(name: str, entry: JigEntry, processes: NamedProcesses) -> Jig:
     keys = entry.model_dump(exclude_none=True, exclude={"pivots", "varies", "tilt_deg"})
     turned = entry.tilt_deg is not None
     shifted = any(key in keys for key in ("plus_minus", "diameter", "process"))

@@ -4,10 +4,12 @@ import math
 
 import numpy as np
 
+from study.bands import curve_rows
 from study.linear_model import LinearModel, is_nonlinear
 from study.measures import KEYS
 from study.methods import spread
-from study.tasks import CURVE_POSITIONS, StudyWork
+from study.position_words import position_text
+from study.tasks import StudyWork
 from study.verdicts import AS_DRAWN, HOLD, Share, looser, open_together, verdict_of
 from study.zone_words import zone_text
 
@@ -22,9 +24,11 @@ QUANTILES = {
     "q975": 0.975,
     "q995": 0.995,
 }
-CURVE_QUANTILES = {k: QUANTILES[k] for k in ("q05", "q25", "q50", "q75", "q95")}
 TABLES = ("ranking", "stats", "histogram", "curves", "demand", "worst", "correlations", "failures", "verdicts")
 BINS = 40
+STILL = {"deg": 1e-7, "mm": 1e-7, "%": 1e-6}  # spread below this is the solver's rounding (rows close to 1e-9 mm)
+STILL_RATE = 1e-9
+NO_SHARES = ("st", "st_low", "st_high", "s1", "s1_low", "s1_high", "linear_share", "mu_star", "mu_star_low", "mu_star_high")
 LINEAR_DRAWS = 4096
 
 
@@ -98,23 +102,38 @@ class _Stage:
 
     # --- rows
 
+    def _is_still(self, i):
+        """Whether nothing moves the measure: what spread it has is the rounding of the solver."""
+        if self.drawn is not None:
+            values = self.drawn[i, self.status == 0]
+            values = values[np.isfinite(values)]
+            spread_of = float(values.std()) if len(values) else math.nan
+        else:
+            spread_of = self.linear.rss[i]
+        return spread_of < STILL.get(_unit(self.measures[i]), STILL_RATE)
+
     def _ranking(self):
+        still = [self._is_still(i) for i in range(len(self.measures))]
         for i, measure in enumerate(self.measures):
+            if still[i]:
+                self.facts["notes"].append(f"{self.stage}: nothing moves {measure.name}, so nothing is ranked for it")
             rows = [self._ranking_row(i, measure, g) for g in self.sources]
+            for row in rows if still[i] else ():
+                row |= dict.fromkeys(NO_SHARES) | {"effect": None, "effect_per_mm": None}
             key = {"sobol": "st", "morris": "mu_star"}.get(self.method, "linear_share")
             if rows and all(row[key] is None for row in rows):
                 key = "linear_share"
             rows.sort(key=lambda row, key=key: -(row[key] if row[key] is not None else -1.0))
             for rank, row in enumerate(rows, start=1):
                 row["rank"] = rank
-            self._ties(i, rows)
+            self._ties(i, rows, still[i])
             self.out["ranking"] += rows
 
-    def _ties(self, i, rows):
+    def _ties(self, i, rows, still):
         tied = getattr(self.result, "tied", None)
         number = {s.name: g for g, s in enumerate(self.model.sources)}
         for rank, row in enumerate(rows):
-            row["tied"] = bool(rank and tied is not None and not self._held_back(i) and tied[i, number[row["source"]]])
+            row["tied"] = bool(rank and not still and tied is not None and not self._held_back(i) and tied[i, number[row["source"]]])
 
     def _held_back(self, i):
         if self.result is None or self.method == "spread":
@@ -143,7 +162,7 @@ class _Stage:
 
     def _effect(self, i, measure, source):
         """The signed effects of the measure's own hand; an axle measure reads the left hand's, then the right's."""
-        axle = KEYS[measure.of].scope_on(self.work.after.solid) == "axle"
+        axle = self.work.after.solid or KEYS[measure.of].scope == "axle"
         columns = [c for rows in source.columns for c in rows] if axle else list(source.of_hand(measure.side))
         axes = list(source.axes)
         if axle and len(source.columns) == 2:
@@ -164,7 +183,7 @@ class _Stage:
         limits = np.array([measure.limits or (-np.inf, np.inf) for measure in self.measures]).reshape(m, 2)
         limited = any(measure.limits for measure in self.measures)
         good = None
-        if summary is not None and limited:
+        if summary is not None and limited and self.method != "linear":  # a linear model knows no stops and no failures
             good = spread.good_share(values, limits, bad[0] | bad[1])
         self._facts_of(good, bad)
         for i, measure in enumerate(self.measures):
@@ -242,7 +261,9 @@ class _Stage:
         values = values[np.isfinite(values)]
         if not len(values):
             return
-        counts, edges = np.histogram(values, bins=BINS)
+        least = 1e-9 * (1.0 + abs(values.mean()))
+        ends = (values.min(), max(values.max(), values.min() + least))
+        counts, edges = np.histogram(values, bins=BINS, range=ends)
         for count, left, right in zip(counts, edges[:-1], edges[1:], strict=True):
             self.out["histogram"].append(
                 {"stage": self.stage, "measure_no": i, "left": float(left), "right": float(right), "count": int(count)}
@@ -275,8 +296,12 @@ class _Stage:
                 })  # fmt: skip
 
     def _worst(self):
-        rows = self.worst.values[:-1].reshape(len(self.measures), 2, -1)
-        self.facts["builds"] += int(self.worst.values[-1, 0])
+        rows = self.worst.values[:-2].reshape(len(self.measures), 2, -1)
+        self.facts["builds"] += int(self.worst.values[-2, 0])
+        lost = int(self.worst.values[-1, 0])
+        if lost:
+            self.facts["unassembled"] += lost
+            self.facts["notes"].append(f"{self.stage}: {lost} builds of the search could not be assembled or aligned; worse ones may lie beyond")
         for i, k in np.ndindex(len(self.measures), 2):
             for source in self.model.sources:
                 for hand, columns in zip(source.hands, source.columns, strict=True):
@@ -318,17 +343,8 @@ def _verdicts(work, outcomes, out, facts):
 
 
 def _curves(work, task, outcome):
-    rows = []
     values = np.where(outcome.status > 0, np.nan, outcome.values)
-    for i, measure in enumerate(work.curve_measures):
-        for j, x in enumerate(measure.sweep):
-            line = values[i * CURVE_POSITIONS + j]
-            rows.append({
-                "stage": task.stage, "axis": measure.over, "x": x, "key": measure.of, "unit": KEYS[measure.of].unit,
-                "side": "axle" if KEYS[measure.of].scope == "axle" else "left", "nominal": _number(line[0]),
-                **_quantiles(line[1:], CURVE_QUANTILES),
-            })  # fmt: skip
-    return rows
+    return curve_rows(work.curve_measures, values, stage=task.stage, solid=work.after.solid)
 
 
 def _quantiles(values, wanted):
@@ -343,20 +359,6 @@ def _unit(measure):
     if measure.take == "slope":
         return f"{unit} per {'deg' if measure.over == 'roll' else 'mm'}"
     return unit
-
-
-def position_text(measure) -> str:
-    """Where a measure is taken, in words."""
-    units = {"bump": "mm", "roll": "°", "rack": "mm"}
-    at = {"bump": measure.bump_mm, "roll": measure.roll_deg, "rack": measure.rack_mm}
-    words = [f"{name} {value:g} {units[name]}" for name, value in at.items() if value and name != measure.over]
-    if measure.over:
-        sweep = measure.sweep
-        words.insert(
-            0,
-            f"{measure.take} over {measure.over} {sweep[0]:g} to {sweep[-1]:g} {units[measure.over]}, {len(sweep)} positions",
-        )
-    return ", ".join(words) or "at design"
 
 
 def _number(value):

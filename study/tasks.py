@@ -8,16 +8,21 @@ Its outcome is one array (rows, builds) and a status (builds,).
 
 from dataclasses import dataclass, replace
 from functools import cached_property
-from types import SimpleNamespace
 
 import numpy as np
 
+from catalog.errors import InputError
+from study.bands import builds_along
+from study.linear_steps import step_moves
 from study.methods import METHODS, SAMPLED, linear, spread
 from study.methods.problem import Problem
+from study.position_words import position_text
 from study.response import Response, requests_of
 from study.stations import PositionError, Spot
 from study.study_measures import Measure
 from study.verdicts import AS_DRAWN, VERDICT_BUILDS, field_with, good_flags, judged, looser
+from study.zone_field import ZoneField
+from study.zones import Zone
 
 BUILDS_PER_TASK = 4096
 CURVE_BUILDS = 256
@@ -29,6 +34,10 @@ CURVE_KEYS = {
 }
 CURVE_TRAVEL = {"bump": 30.0, "roll": 2.0, "rack": 20.0}
 CURVE_POSITIONS = 13
+
+
+class LimitError(InputError):
+    """Limits on a measure that has no value."""
 
 
 @dataclass(frozen=True)
@@ -65,6 +74,17 @@ class StudyWork:
         self.method = METHODS[study.method]
         self.after = Response(geometry, study, stage=self.stages[-1])
         self.model = self.after.model
+        self._judge_limits()
+
+    def _judge_limits(self):
+        """Refuse limits on what the drawing itself has no value of. Raises LimitError."""
+        nominal = self.after.evaluate(np.zeros((self.model.scalars, 1)))
+        for measure, value in zip(self.study.measures, nominal.values[:, 0], strict=True):
+            if measure.limits and not np.isfinite(value):
+                raise LimitError(
+                    f'measure "{measure.name}": has limits, but {measure.of} has no value on this geometry there '
+                    f"({position_text(measure)}); give it a position where it is defined, or leave it out"
+                )
 
     @cached_property
     def before(self) -> Response:
@@ -165,7 +185,8 @@ class StudyWork:
     def judge(self) -> Response:
         """The response of the limited measures alone: what good builds are told by."""
         limited = tuple(measure for measure in self.study.measures if measure.limits)
-        return Response(self.geometry, replace(self.study, measures=limited), stage=self.stages[-1])
+        others = tuple(measure for measure in self.study.measures if not measure.limits)
+        return Response(self.geometry, replace(self.study, measures=limited), stage=self.stages[-1], visits=others)
 
     def _run_verdict(self, task):
         """Flags of good builds (1, N) with one source loosened; AS_DRAWN: with none."""
@@ -175,11 +196,31 @@ class StudyWork:
         return Outcome(good[None].astype(float), status)
 
     def _run_worst(self, task):
-        response = self.response(task.stage)
-        found = self.method.search(lambda e: response.evaluate(e).values, self.model.field, seed=self.study.seed)
+        """Rows: per measure and direction the value, then the errors; last the builds run and those without a value."""
+        response, smooth = self.response(task.stage), self.stepless(task.stage)
+        if smooth is response:
+            found = self.method.search(lambda e: response.evaluate(e).values, self.model.field, seed=self.study.seed)
+        else:
+            found = self._worst_by_steps(response, smooth)
         rows = np.concatenate((found.values[:, :, None], found.errors), axis=2)
-        count = np.full((1, rows.shape[2]), float(found.builds))
-        return Outcome(np.concatenate((rows.reshape(-1, rows.shape[2]), count)), np.zeros(rows.shape[2], np.uint8))
+        counts = np.repeat([[float(found.builds)], [float(found.unassembled)]], rows.shape[2], axis=1)
+        return Outcome(np.concatenate((rows.reshape(-1, rows.shape[2]), counts)), np.zeros(rows.shape[2], np.uint8))
+
+    def _worst_by_steps(self, response, smooth):
+        """Search without steps, what a step leaves being further scalars; then the worst of real builds about there."""
+        moves = [move for name, hand in smooth.hands.items() for move in _step_bands(hand, name, smooth.starts)]
+        field = ZoneField(self.model.field.zones + tuple(Zone("length", (half,)) for half, _, _ in moves))
+        d = self.model.scalars
+
+        def evaluate(errors):
+            own = errors[:d].copy()
+            for left, (_, rows, column) in zip(errors[d:], moves, strict=True):
+                own[rows] += column[:, None] * left
+            return smooth.evaluate(own).values
+
+        found = self.method.search(evaluate, field, seed=self.study.seed)
+        found = replace(found, errors=found.errors[:, :, :d])
+        return self.method.confirm(lambda e: response.evaluate(e).values, self.model.field, found, seed=self.study.seed)
 
     # --- curves
 
@@ -197,29 +238,23 @@ class StudyWork:
         return tuple(found)
 
     def _reach(self, axis):
-        if axis == "rack" and not self.after.hands["left"].corner.has_rack:
+        hands = self.after.hands.items()
+        if axis == "rack" and not all(hand.corner.has_rack for _, hand in hands):
             return 0.0
         travel = CURVE_TRAVEL[axis]
         for _ in range(4):
             try:
-                for end in (-travel, travel):
-                    at = {"bump": 0.0, "roll": 0.0, "rack": 0.0} | {axis: end}
-                    self.after.hands["left"].station(Spot(at["bump"], at["roll"], at["rack"]))
+                for name, hand in hands:
+                    for end in (-travel, travel):
+                        at = {"bump": 0.0, "roll": 0.0, "rack": 0.0} | {axis: end if axis == "bump" or name == "left" else -end}
+                        hand.station(Spot(at["bump"], at["roll"], at["rack"]))
                 return travel
             except PositionError:
                 travel /= 2.0
         return 0.0
 
     def _run_curves(self, task):
-        asked = SimpleNamespace(
-            errors=self.study.errors, alignment=self.study.alignment, sides=self.study.sides, jigs=self.study.jigs,
-            measures=self.curve_measures,
-        )  # fmt: skip
-        response = Response(self.geometry, asked, stage=task.stage)
-        scalars = Problem(np.zeros(self.model.scalars, int), 1)
-        unit = spread.draw(scalars, size=CURVE_BUILDS, seed=self.study.seed + 1, first=0, count=CURVE_BUILDS)
-        errors = np.concatenate((np.zeros((self.model.scalars, 1)), self.model.field.to_errors(unit.T)), axis=1)
-        found = response.evaluate(errors)
+        found = builds_along(self.geometry, self.study, self.curve_measures, stage=task.stage, count=CURVE_BUILDS)
         return Outcome(found.positions, found.status)
 
     @cached_property
@@ -236,3 +271,13 @@ def _keep_freed_memory():
     then stop costing page faults (a third of its time). Elsewhere this is one array made and dropped.
     """
     np.empty(2**25 - 2**14, np.uint8)
+
+
+def _step_bands(hand, name, starts):
+    """(half a step in mm, rows of the stepped angles' bands, degrees per mm (S,)) of every stepped adjuster of a hand."""
+    stepped = np.flatnonzero(hand.bench.step)
+    rows = [hand.bands[name][hand.bench.targets[k]] for k in stepped]
+    if not len(stepped):
+        return []
+    apart = step_moves(starts[name][1], stepped)
+    return [(hand.bench.step[k] / 2.0, rows, apart[:, j]) for j, k in enumerate(stepped)]

@@ -5,8 +5,11 @@ the same charts as finished Vega-Lite dicts, which is quicker where a page takes
 """
 
 from study.charts.curves import curve, curve_kinds, curve_spec
-from study.charts.exports import ChartExportError, export, safe_stem
+from study.charts.exports import ChartExportError, drawn, export, safe_stem, write
+from study.charts.maps import map_spec, measure_map
+from study.charts.panels import panels
 from study.charts.rankings import matrix, matrix_spec, ranking, ranking_spec
+from study.charts.roll_camber import roll_camber, roll_camber_spec
 from study.charts.spread import distribution, distribution_spec
 from study.charts.tables import Tables, measures
 from study.charts.together import correlations, correlations_spec, demand, demand_spec
@@ -17,15 +20,23 @@ __all__ = [
     "correlations",
     "curve",
     "curve_kinds",
+    "curve_spec",
     "demand",
     "distribution",
+    "drawn",
     "every",
     "export",
+    "map_spec",
     "matrix",
+    "measure_map",
     "measures",
+    "panels",
     "ranking",
+    "roll_camber",
+    "roll_camber_spec",
     "safe_stem",
     "view",
+    "write",
 ]
 
 VIEWS = ("front", "side", "top")

@@ -26,10 +26,13 @@ def curve(tables: tb.Tables, axis: str, key: str, **options) -> alt.LayerChart |
     return as_chart(curve_spec(tables, axis, key, **options))
 
 
-def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, height: int = 200) -> dict | None:
+def curve_spec(
+    tables: tb.Tables, axis: str, key: str, *, held: str = "", width: int = 340, height: int = 200
+) -> dict | None:
     """One measure along one input: a line per side (solid left, dashed right) over the bands of 50 and 90 %.
 
-    A second side's band is drawn by its dashed edges, or left out where both sides are alike.
+    A second side's band is drawn by its dashed edges, or left out where both sides are alike. Rows without
+    quantiles give the lines alone. `held`: the inputs held meanwhile, in words.
     """
     found = curve_rows(tables, axis, key)
     if not found:
@@ -37,6 +40,7 @@ def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, heig
     words, unit_x, called = AXES.get(axis, (axis, "", axis))
     alike = _alike(found)
     found = [row for row in found if not (alike and row["side"] == "right")]
+    banded = found if any(row["q05"] is not None for row in found) else []
     sides = [side for side in _SIDES if any(row["side"] == side for row in found)]
     unit = found[0]["unit"]
     along = unit_text(unit)
@@ -44,8 +48,9 @@ def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, heig
         _template(len(sides) > 1),
         data={
             "line": found,
-            "band": [row for row in found if row["side"] == sides[0]],
-            "edges": [row for row in found if row["side"] != sides[0]],
+            "band": [row for row in banded if row["side"] == sides[0]],
+            "dots": _alone(found),
+            "edges": [row for row in banded if row["side"] != sides[0]],
         },
         slots={
             "sides": sides,
@@ -54,12 +59,33 @@ def curve_spec(tables: tb.Tables, axis: str, key: str, *, width: int = 340, heig
             "x": [f"{words}, {unit_x}"],
         },
         title=f"{key_name(key).capitalize()} in {called}" + (f", {along}" if along else ""),
-        subtitle=("left, right alike; " if alike else "")
-        + "line: nominal; bands: middle 50 and 90 % of builds",
+        subtitle="; ".join(_subtitle(found, alike, held)),
         description=_description(found, key, words, unit),
         width=width,
         height=height,
     )
+
+
+def _alone(found: list[dict]) -> list[dict]:
+    """Points between two undefined ones, which a line would not show."""
+    dots = []
+    for side in dict.fromkeys(row["side"] for row in found):
+        line = [row for row in found if row["side"] == side]
+        known = [False, *(row["nominal"] is not None for row in line), False]
+        dots += [row for i, row in enumerate(line, start=1) if known[i] and not known[i - 1] and not known[i + 1]]
+    return dots
+
+
+def _subtitle(found: list[dict], alike: bool, held: str) -> list[str]:
+    parts = ["left, right alike"] if alike else []
+    if any(row["q05"] is not None for row in found):
+        parts.append("line: nominal; bands: middle 50 and 90 % of builds")
+    elif found[0]["side"] in ("left", "right"):
+        sides = dict.fromkeys(row["side"] for row in found)
+        parts.append("nominal" if alike or len(sides) > 1 else f"nominal, {found[0]['side']} side")
+    else:
+        parts.append("nominal")
+    return [*parts, held] if held else parts
 
 
 def _alike(found: list[dict]) -> bool:
@@ -122,16 +148,26 @@ def _template(several: bool) -> dict:
         .mark_line(strokeWidth=2.2)
         .encode(x=x, y=amount(alt.Y, "nominal", title=None, scale=scale), color=colour, strokeDash=dash)
     )
-    return template(*bands, line)
+    dots = (
+        alt.Chart(rows("dots"))
+        .mark_point(filled=True, size=30, opacity=1)
+        .encode(x=x, y=amount(alt.Y, "nominal", title=None, scale=scale), color=colour)
+    )
+    return template(*bands, line, dots)
 
 
 def _description(found: list[dict], key: str, words: str, unit: str | None) -> str:
-    known = [row for row in found if row["nominal"] is not None]
-    if not known:
-        return f"{key_name(key)} along {words}: not defined."
-    first, last = known[0], known[-1]
-    return (
-        f"{key_name(key)} along {words}, nominal with the band of the builds: "
-        f"{quantity(first['nominal'], unit)} at {quantity(first['x'], None)}, "
-        f"{quantity(last['nominal'], unit)} at {quantity(last['x'], None)}."
-    )
+    name, parts = key_name(key), []
+    for side in dict.fromkeys(row["side"] for row in found):
+        known = [row for row in found if row["side"] == side and row["nominal"] is not None]
+        if known:
+            first, last = known[0], known[-1]
+            whose = f"{side} " if side != "axle" else ""
+            parts.append(
+                f"{whose}{quantity(first['nominal'], unit)} at {quantity(first['x'], None)}, "
+                f"{quantity(last['nominal'], unit)} at {quantity(last['x'], None)}"
+            )
+    if not parts:
+        return f"{name} along {words}: not defined."
+    banded = any(row["q05"] is not None for row in found)
+    return f"{name} along {words}, nominal{' with the band of the builds' if banded else ''}: {'; '.join(parts)}."

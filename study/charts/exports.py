@@ -2,7 +2,10 @@
 
 import json
 import re
+import struct
 import unicodedata
+import zlib
+from collections.abc import Sequence
 from html import escape
 from pathlib import Path
 
@@ -10,6 +13,7 @@ from catalog.errors import WorkError
 from study.charts.tables import plain
 
 PNG_SCALE = 2.0
+_PNG_HEADER = 33  # signature and IHDR chunk
 _RESERVED = {"con", "prn", "aux", "nul", *(f"{name}{n}" for name in ("com", "lpt") for n in range(1, 10))}
 
 
@@ -31,27 +35,37 @@ def export(chart, folder: Path, stem: str) -> list[Path]:
 
     Raises ChartExportError when the folder cannot be written or the chart cannot be drawn.
     """
-    import vl_convert
-
     folder, stem = Path(folder), safe_stem(stem)
     spec = plain(chart if isinstance(chart, dict) else chart.to_dict())
+    contents = drawn(spec, ("svg", "png", "pdf", "json"), name=stem)
+    names = {"json": "vl.json"}
+    return [write(folder / f"{stem}.{names.get(ending, ending)}", content) for ending, content in contents.items()]
+
+
+def drawn(spec: dict, endings: Sequence[str], *, name: str = "chart") -> dict[str, bytes]:
+    """The contents of files of a specification by ending: svg, png, pdf, json. Raises ChartExportError."""
+    import vl_convert
+
+    spec = plain(spec)
+    title, text = _title(spec), _label(spec)
+    make = {
+        "svg": lambda svg: svg.encode(),
+        "png": lambda svg: png_with_text(vl_convert.svg_to_png(svg, scale=PNG_SCALE), title=title, description=text),
+        "pdf": vl_convert.svg_to_pdf,
+        "json": lambda svg: json.dumps(spec, ensure_ascii=False, allow_nan=False, indent=1).encode(),
+    }
     try:
-        svg = with_text_alternative(vl_convert.vegalite_to_svg(spec), spec)
-        contents = {
-            "svg": svg.encode(),
-            "png": vl_convert.svg_to_png(svg, scale=PNG_SCALE),
-            "pdf": vl_convert.svg_to_pdf(svg),
-            "vl.json": json.dumps(spec, ensure_ascii=False, allow_nan=False, indent=1).encode(),
-        }
+        needed = any(ending != "json" for ending in endings)
+        svg = with_text_alternative(vl_convert.vegalite_to_svg(spec), spec) if needed else ""
+        return {ending: make[ending](svg) for ending in endings}
     except (ValueError, RuntimeError) as error:
-        raise ChartExportError(f"Chart `{stem}` could not be drawn: {str(error).splitlines()[0]}") from error
-    return [_write(folder, f"{stem}.{ending}", content) for ending, content in contents.items()]
+        raise ChartExportError(f"Chart `{name}` could not be drawn: {str(error).splitlines()[0]}") from error
 
 
-def _write(folder: Path, name: str, content: bytes) -> Path:
-    path = folder / name
+def write(path: Path, content: bytes) -> Path:
+    """Write a chart file, its folder made when missing. Raises ChartExportError."""
     try:
-        folder.mkdir(parents=True, exist_ok=True)
+        path.parent.mkdir(parents=True, exist_ok=True)
         path.write_bytes(content)
     except OSError as error:
         raise ChartExportError(
@@ -60,12 +74,29 @@ def _write(folder: Path, name: str, content: bytes) -> Path:
     return path
 
 
+def _title(spec: dict) -> str:
+    title = spec.get("title") or ""
+    return str(title.get("text", "") if isinstance(title, dict) else title)
+
+
+def _label(spec: dict) -> str:
+    return str(spec.get("description") or _title(spec))
+
+
 def with_text_alternative(svg: str, spec: dict) -> str:
     """The SVG with role, title and label on its root, so that it is read aloud outside a page too."""
-    title = spec.get("title") or ""
-    title = title.get("text", "") if isinstance(title, dict) else title
-    label = spec.get("description") or str(title)
-    root = f'<svg role="img" aria-label="{escape(label)}" '
-    svg = svg.replace("<svg ", root, 1)
+    title, label = escape(_title(spec)), escape(_label(spec))
+    svg = svg.replace("<svg ", f'<svg role="img" aria-label="{label}" ', 1)
     end = svg.index(">", svg.index("<svg ")) + 1
-    return f"{svg[:end]}<title>{escape(str(title))}</title><desc>{escape(label)}</desc>{svg[end:]}"
+    return f"{svg[:end]}<title>{title}</title><desc>{label}</desc>{svg[end:]}"
+
+
+def png_with_text(png: bytes, *, title: str, description: str) -> bytes:
+    """The PNG with its title and description as text that programs show (iTXt, behind the header chunk)."""
+    added = b"".join(_text_chunk(word, text) for word, text in (("Title", title), ("Description", description)))
+    return png[:_PNG_HEADER] + added + png[_PNG_HEADER:]
+
+
+def _text_chunk(word: str, text: str) -> bytes:
+    body = b"iTXt" + word.encode() + b"\0\0\0\0\0" + text.encode()
+    return struct.pack(">I", len(body) - 4) + body + struct.pack(">I", zlib.crc32(body))

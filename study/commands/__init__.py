@@ -9,7 +9,7 @@ from catalog.errors import HoldtightError
 
 COMMANDS = (
     "run", "evaluate", "sweep", "measures", "add", "geometries", "show", "queue", "work", "studies", "cancel",
-    "critical", "sheet", "schema",
+    "critical", "sheet", "schema", "processes", "sql", "export", "as-built",
 )  # fmt: skip
 
 app = typer.Typer(
@@ -21,7 +21,7 @@ app = typer.Typer(
     "aligns every build, ranks the pivots. Rigid geometry only: no strength, no compliance, no fatigue.",
 )
 for _name in COMMANDS:
-    app.command(_name)(import_module(f"study.commands.{_name}_command").run)
+    app.command(_name)(import_module(f"study.commands.{_name.replace('-', '_')}_command").run)
 
 
 def main() -> None:

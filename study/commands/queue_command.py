@@ -16,11 +16,10 @@ def run(
 ) -> None:
     """Check studies against their geometries and queue them; `holdtight work` runs them."""
     from catalog.store import Catalog
-    from study.runner import enqueue
-    from study.study_file import read_study
+    from study.runner import enqueue, read_asked
 
     store = Catalog(catalog)
-    studies = [(path, read_study(path)) for path in files]
+    studies = [(path, read_asked(store, path)) for path in files]
     made = [
         {"study": enqueue(store, study, path.parent, by=by_whom(by)), "title": study.title, "file": str(path)}
         for path, study in studies

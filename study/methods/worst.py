@@ -69,6 +69,28 @@ def search(evaluate: Evaluate, field: ZoneField, *, seed: int, starts: int = 3, 
     return _best(nominal, at, score, measure, sign, counted)
 
 
+def confirm(evaluate: Evaluate, field: ZoneField, found: Worst, *, seed: int, near: int = 48, drawn: int = 4096) -> Worst:
+    """The worst of real builds: those that a search on a smooth stand-in found, others near them, and drawn ones.
+
+    Where adjusters go by steps a build's values jump, so no gradient leads to the worst of them. `near` builds on the
+    last eighth of the way from the middle of the zones to each found one pass through all phases of the steps.
+    """
+    counted = _Counted(evaluate)
+    ends = found.errors.reshape(-1, field.n_scalars).T
+    way = np.linspace(0.875, 1.0, near)
+    middle = field.extreme(np.zeros((field.n_scalars, 1)))
+    close = (middle[:, :, None] + (ends - middle)[:, :, None] * way).reshape(field.n_scalars, -1)
+    problem = Problem(np.zeros(field.n_scalars, dtype=int), 1)
+    others = field.to_errors(spread.draw(problem, size=drawn, seed=seed, first=0, count=drawn).T)
+    errors = np.hstack([close, others])
+    values = counted(errors)
+    picks = [(int(np.nanargmin(row)), int(np.nanargmax(row))) if np.isfinite(row).any() else (0, 0) for row in values]
+    best = np.array([[values[m, k] for k in pick] for m, pick in enumerate(picks)]).reshape(len(values), 2)
+    where = np.array([[errors[:, k] for k in pick] for pick in picks]).reshape(len(values), 2, field.n_scalars)
+    nominal = counted(np.zeros((field.n_scalars, 1)))[:, 0]
+    return Worst(best, where, nominal, found.builds + counted.builds, found.unassembled + counted.unassembled)
+
+
 def _starts(field: ZoneField, *, seed: int, starts: int) -> np.ndarray:
     """The middle of the zones and their extremes in `starts` drawn directions (D, 1 + starts)."""
     problem = Problem(np.zeros(field.n_scalars, dtype=int), 1)
