@@ -50,7 +50,7 @@ class Measured:
     @property
     def offset(self) -> Point:
         """Measured minus drawing (mm): x forward, y to the left, z up, on both sides of the car."""
-        return tuple(a - b for a, b in zip(self.position, self.nominal, strict=True))
+        return tuple(round(a - b, 9) for a, b in zip(self.position, self.nominal, strict=True))
 
     @property
     def position_mm(self) -> float:

@@ -216,7 +216,7 @@ def _check_step(tight: Process, loose: Process) -> None:
         if wide < narrow * (1 - 1e-9):
             raise ProcessError(
                 f'process "{loose.name}" is tighter than "{tight.name}"{where}: its errors spread by {wide:.3g} '
-                f"(1 sd an axis) against {narrow:.3g}; name a looser one, or none"
+                f"(1 sd an axis, {loose.distribution}) against {narrow:.3g} ({tight.distribution}); name a looser one, or none"
             )
 
 

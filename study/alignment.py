@@ -127,10 +127,10 @@ def align(bench: Bench, measure, *, goal, start, gains, stepless=False) -> Setti
     n = goal.shape[1]
     state = _State(measure, goal, start.copy(), gains)
     free = np.ones((len(bench.targets), n), bool)
-    stepped = (bench.step > 0) & (not stepless)
+    stepped = bench.step > 0
     stop = _stops(bench, stepped)
     ran_out = _set_within_reach(state, free, stop, slack=np.where(stepped, bench.step / 2.0, 0.0)[:, None])
-    if stepped.any():
+    if stepped.any() and not stepless:
         state.move_to(_stepped(state.settings, bench, stepped, stop))
         free &= ~stepped[:, None]
         ran_out |= _set_within_reach(state, free, stop, slack=np.zeros((len(stop), 1)))

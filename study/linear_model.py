@@ -2,12 +2,8 @@
 
 import numpy as np
 
-from study.linear_steps import step_moves
 from study.methods import linear
-from study.methods.problem import Problem
 from study.response import TAKES, taken
-from study.zone_field import ZoneField
-from study.zones import Zone
 
 
 def is_nonlinear(measure) -> bool:
@@ -69,31 +65,8 @@ class LinearModel:
         )  # fmt: skip
 
     def _with_steps(self, effects):
-        """Zones, effects and groups; every stepped adjuster adds ±half a step as one more scalar of its band's source."""
-        model = self.work.model
-        added = self._steps(effects) if self.stage == "after" else []
-        if not added:
-            return model.field, effects, model.problem
-        groups, halves, columns = zip(*added, strict=True)
-        field = ZoneField(model.field.zones + tuple(Zone("length", (half,)) for half in halves))
-        problem = Problem(np.concatenate((model.problem.group_of, groups)), len(model.sources), model.problem.names)
-        return field, np.concatenate((effects, np.stack(columns, axis=1)), axis=1), problem
-
-    def _steps(self, effects):
-        """(source, half a step in mm, effect (P,) per mm) of every stepped adjuster.
-
-        A setting that is off by δ leaves the stepped angles off by M δ, M = inv((G⁻¹)_SS) with G the gains and S the
-        stepped ones, since the stepless adjusters are set again; what follows from an angle is known from its band.
-        """
-        response, found = self.work.stepless(self.stage), []
-        for name, hand in response.hands.items():
-            stepped = np.flatnonzero(hand.bench.step)
-            shared = name != "left" and hand.bands[name] == hand.bands["left"]
-            if not len(stepped) or shared:
-                continue
-            rows = [hand.bands[name][hand.bench.targets[k]] for k in stepped]
-            apart = step_moves(response.starts[name][1], stepped)
-            for j, k in enumerate(stepped):
-                column = effects[:, rows] @ apart[:, j]
-                found.append((self.work.model.problem.group_of[rows[j]], hand.bench.step[k] / 2.0, column))
-        return found
+        """Field, effects and problem with what stepped adjusters leave, at the stage that has them."""
+        if self.stage != "after":
+            return self.work.model.field, effects, self.work.model.problem
+        smooth = self.work.smooth
+        return smooth.field, smooth.effects(effects), smooth.problem

@@ -55,12 +55,6 @@ def datum_letters(text: str) -> tuple[str, ...]:
     return tuple(re.split(r"\s*[|,]\s*", found[0])) if found else ()
 
 
-def box_words(row: dict) -> str:
-    """A box as position tolerances, one along each axis."""
-    widths = {axis: 2 * half for axis, half in zip("xyz", row["half"], strict=True) if half}
-    return "as position tolerances: " + ", ".join(f"⌖ {width:g} along {axis}" for axis, width in widths.items())
-
-
 def axis_words(axis) -> str:
     """`x`, `y`, `z`, or the direction's three numbers."""
     for name, unit in zip("xyz", np.eye(3), strict=True):

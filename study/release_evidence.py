@@ -13,6 +13,7 @@ FACTS = (
     "method", "size", "seed", "sides", "builds", "unassembled", "withheld", "good_share", "good_low", "good_high",
     "all_cars", "open_together", "open_together_good_share", "notes",
 )  # fmt: skip
+APART = 0.1  # total and linear share that differ by more than this are both told
 MEASURED = ("measure", "position", "unit", "nominal", "mean", "sd", "limit_low", "limit_high", "good_share")
 
 
@@ -38,31 +39,42 @@ def verdict_of(evidence: Mapping) -> str | None:
 
 def figures_text(evidence: Mapping) -> str:
     """Where it matters most and what loosening it alone did, in words."""
-    from study.charts.words import good_percent, measure_name, percent, quantity
-
-    key, best = strongest(evidence)
-    parts = []
-    if best:
-        share = quantity(best[key], best["unit"], 2) if key == "mu_star" else percent(best[key])
-        interval = f" ({percent(best['st_low'])} to {percent(best['st_high'])})" if key == "st" and best["st_low"] is not None else ""
-        parts.append(f"{share}{interval} of {measure_name(best)}" if key != "mu_star" else f"µ* {share} in {measure_name(best)}")
+    parts = [_strength(*strongest(evidence))]
     loosened = evidence["loosened"]
     if loosened and loosened["good_share"] is not None:
-        parts.append(
-            f"alone at {loosened['looser_process'] or loosened['looser_zone']} {good_percent(loosened['good_share'])} good"
-            f" ({good_percent(loosened['good_low'])} to {good_percent(loosened['good_high'])})"
-        )
-    return "; ".join(parts).replace("\u00a0", " ")
+        good, low, high = (100 * loosened[key] for key in ("good_share", "good_low", "good_high"))
+        wider = loosened["looser_process"] or loosened["looser_zone"]
+        parts.append(f"alone at {wider}: {good:.1f} % good ({low:.1f} to {high:.1f} %)")
+    return "; ".join(part for part in parts if part)
+
+
+def _strength(key, row):
+    from study.charts.words import measure_name, quantity
+
+    if row is None:
+        return ""
+    name = measure_name(row)
+    name = name[:1].lower() + name[1:] if row["measure"][:1].islower() else name
+    if key == "mu_star":
+        return f"mean effect {quantity(row[key], row['unit'], 2)} on {name}".replace("\u00a0", " ")
+    low, high = row["st_low"], row["st_high"]
+    interval = f" ({100 * max(low, 0):.0f} to {100 * high:.0f} %)" if key == "st" and low is not None else ""
+    linear = row["linear_share"]
+    apart = key == "st" and linear is not None and abs(linear - row["st"]) > APART
+    return f"{100 * row[key]:.0f} % of {name}{interval}" + (f", {100 * linear:.0f} % linear" if apart else "")
 
 
 def strongest(evidence: Mapping) -> tuple[str | None, Mapping | None]:
-    """(the figure by which the study ranks, the row of the measure in which it is greatest: of one with limits, if any)."""
+    """(the figure by which the study ranks, the row of the measure that it does most to: of one with limits, if any).
+
+    Of shares the linear one chooses, since steps of an adjuster raise the total ones of all sources together.
+    """
     measures = evidence["measures"]
     measures = [row for row in measures if row["limited"]] or measures
     for key in ("st", "linear_share"):
         rows = [row for row in measures if row[key] is not None]
         if rows:
-            return key, max(rows, key=lambda row: row[key])
+            return key, max(rows, key=lambda row: row[key] if row["linear_share"] is None else row["linear_share"])
     rows = [row for row in measures if row["mu_star"] is not None]
     return ("mu_star", min(rows, key=lambda row: row["rank"])) if rows else (None, None)
 

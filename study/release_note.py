@@ -1,5 +1,7 @@
 """The drawing note of a release: the tolerances as they stand on the drawing, then why, in plain text."""
 
+import re
+import textwrap
 from collections.abc import Mapping, Sequence
 
 from study.release_callouts import callout, datum_letters
@@ -11,13 +13,15 @@ ISO_22081 = (
     " each one has its own tolerance here."
 )
 _LEGEND = {
-    "ball": "⌖ S⌀: position (ISO 1101), the joint centre lies in a sphere of that diameter about its true position.",
-    "box": "±: coordinate tolerances along the axes named. ISO 1101 has no such zone for a point; as position tolerances"
-    " it is one of twice the figure along each axis, between two planes (give each its orientation plane indicator).",
-    "cylinder": "⌖ ⌀: position (ISO 1101), in a cylinder of that diameter along the direction named; along it the ± figure.",
+    "ball": "S⌀ in a position frame (ISO 1101): the joint centre lies in a sphere of that diameter about its true position.",
+    "box": "± along named axes: coordinate tolerances. ISO 1101 has no such zone for a point; written as position tolerances"
+    " it is one of twice the figure along each axis, between two planes, each with its orientation plane indicator.",
+    "cylinder": "⌀ in a position frame (ISO 1101): the joint centre lies in a cylinder of that diameter along the direction"
+    " named, about its true position; along it within the ± figure.",
     "length": "± on a length: distance between the two joint centres.",
-    "tilt": "∠ ⌀T/100: angularity (ISO 1101), over 100 mm the axis lies in a cylinder of diameter T in its true direction.",
-    "CZ": "CZ: the pivots of one jig are one pattern (ISO 5458) that floats together; its own place is toleranced apart."
+    "tilt": "⌀T/100 in an angularity frame (ISO 1101): over 100 mm the axis lies in a cylinder of diameter T along its true"
+    " direction.",
+    "CZ": "CZ (ISO 5458): the pivots of one jig are one pattern that floats together; its own place is toleranced apart."
     " Where their zones differ, mark them SIM.",
 }
 
@@ -25,8 +29,8 @@ _LEGEND = {
 def note(record: Mapping, rows: Sequence[Mapping]) -> str:
     """The note as text, ending with a line break. record, rows: as in `study.release_rows.draft`."""
     blocks = [
-        _head(record), _tolerances(record, rows), _uncovered(record), _numbered("NOTES", notes(record, rows)),
-        _decisions(rows), _numbered("WARNINGS", record["warnings"]), _foot(record),
+        _head(record), _tolerances(rows), _uncovered(record), _numbered("WARNINGS", record["warnings"]),
+        _numbered("NOTES", notes(record, rows)), _decisions(rows), _foot(record),
     ]  # fmt: skip
     return "\n\n".join("\n".join(block) for block in blocks if block) + "\n"
 
@@ -108,7 +112,7 @@ def _head(record):
     return [title(record), f"{released(record)}.", *_wrapped(f"{studied(record)}."), *(_wrapped(f"Reason: {record['reason']}") if record["reason"] else ())]  # fmt: skip
 
 
-def _tolerances(record, rows):
+def _tolerances(rows):
     cells = [["", "feature", "x", "y", "z", "tolerance"]]
     for row in rows:
         lines = [line.text for line in callout(row)]
@@ -149,9 +153,9 @@ def _foot(record):
 
 
 def _wrapped(text, *, first="", then=""):
-    import textwrap
-
-    return textwrap.wrap(text, WIDTH, initial_indent=first, subsequent_indent=then, break_on_hyphens=False)
+    text = re.sub(r"(?<=\d) (?=(?:%|mm|µm)(?:\W|$))", "\u00a0", text)  # a number stays with its unit
+    lines = textwrap.wrap(text, WIDTH, initial_indent=first, subsequent_indent=then, break_on_hyphens=False)
+    return [line.replace("\u00a0", " ") for line in lines]
 
 
 def _pure_letters(text):

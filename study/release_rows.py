@@ -8,7 +8,7 @@ import numpy as np
 
 from catalog.errors import InputError
 from study.assembly import corner_of
-from study.release_callouts import axis_words, box_words, callout_text
+from study.release_callouts import axis_words, callout_text
 from study.release_evidence import evidence, facts, figures_text, verdict_of, warnings
 from study.release_words import assigned, clean_all, said_of_all
 from study.zone_words import law_text, zone_text
@@ -55,7 +55,7 @@ def parts_of(dossier) -> dict[str, int]:
     """The parts of a study and how many of their features have a zone; a jig belongs to the chassis."""
     found: dict[str, int] = {}
     for name in [source.name for source in dossier.model.sources] + list(dossier.model.perfect):
-        part = _part(name)
+        part = part_of(name)
         if part != BANDS:
             found[part] = found.get(part, 0) + (name not in dossier.model.perfect)
     return found
@@ -82,7 +82,7 @@ def draft(dossier, head: Head, said: Said) -> tuple[dict, list[dict]]:
     """(the release, its rows) as columns of the catalog's tables. Raises ReleasePartError, ReleaseTextError."""
     checked_part(dossier, head.part)
     rows = _rows(dossier, head.part, said)
-    uncovered = [name for name in dossier.model.perfect if _part(name) == head.part]
+    uncovered = [name for name in dossier.model.perfect if part_of(name) == head.part]
     record = {
         "drawing": head.drawing, "issue": head.issue, "part": head.part, "study_id": dossier.study["id"],
         "revision_id": head.revision_id, "geometry": dossier.study["geometry"], "title": dossier.study["title"],
@@ -93,13 +93,14 @@ def draft(dossier, head: Head, said: Said) -> tuple[dict, list[dict]]:
     return clean_all(record), clean_all(rows)
 
 
-def _part(name: str) -> str:
+def part_of(name: str) -> str:
+    """The part whose drawing a source stands on."""
     part = name.partition(".")[0]
     return "chassis" if part == JIG else part
 
 
 def _rows(dossier, part, said):
-    sources = [source for source in dossier.model.sources if _part(source.name) == part]
+    sources = [source for source in dossier.model.sources if part_of(source.name) == part]
     names = [source.name for source in sources]
     texts = {
         option: assigned(f"--{option}", given, names)
@@ -192,7 +193,6 @@ def _remarks(dossier, source):
         pivots = ", ".join(pivot.partition(".")[2].replace("_", " ") for pivot in own.pivots)
         yield f"one for {pivots}; " + ("one jig for all cars" if own.varies == "once" else "varies from car to car")
     if zone.form == "box" and source.unit == "mm":
-        yield box_words({"half": zone.half})
         perfect = [axis for axis, half in zip("xyz", zone.half, strict=True) if not half]
         if perfect:
             yield f"{' and '.join(perfect)} held perfect by the study"

@@ -17,7 +17,7 @@ from threadpoolctl import threadpool_limits
 
 from catalog import processes, queue, revisions
 from catalog.chunks import load_chunk, store_chunk
-from catalog.errors import HoldtightError, WorkError
+from catalog.errors import HoldtightError, InputError, WorkError
 from catalog.store import Catalog, CatalogMissing
 from study.dossier import kept_study
 from study.study_file import Study, read_study
@@ -30,6 +30,10 @@ KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the c
 
 class StudyFailed(WorkError):
     """A study ended with an error of its own."""
+
+
+class StudyDoesNotFit(InputError):
+    """A study that asks its geometry for what it does not have or cannot do."""
 
 
 class Stopped(WorkError):
@@ -77,7 +81,10 @@ def geometry_of(catalog: Catalog, study: Study, folder: Path, *, by: str):
 def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
     """Check a study against its geometry and queue it. Gives its number."""
     revision, geometry = geometry_of(catalog, study, folder, by=by)
-    StudyWork(geometry, study)
+    try:
+        StudyWork(geometry, study)
+    except InputError as error:
+        raise StudyDoesNotFit(f'study "{study.title}" on {revision.spec}: {error}') from None
     with catalog.write() as con:
         number = queue.enqueue(
             con, text=study.text, title=study.title, method=study.method, size=study.size, seed=study.seed,

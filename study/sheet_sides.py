@@ -25,14 +25,14 @@ def left_right(tables: tb.Tables, study: dict, geometry: dict, figures: Figures,
         "sides",
         "Left against right",
         tag("p", _lead(shown, whole)),
-        *(_measure(tables, head, stats.get(head["measure_no"], {}), figures, stage) for head in shown),
+        *(_measure(tables, head, stats.get(head["measure_no"], {}), figures, stage, whole) for head in shown),
         tag("ul", *(tag("li", line) for line in told), cls="small") if told else "",
     )
 
 
 _MIRRORED = (
-    "Left and right are built alike in this study, their errors are mirror images: a measure of the whole axle is that of "
-    'a car built alike on both sides. Differences between the sides need sides = "independent".'
+    "Left and right are built alike, with errors that are mirror images: a measure of the whole axle is that of a car built "
+    "alike on both sides."
 )
 
 
@@ -54,7 +54,7 @@ def _lead(shown: list[dict], whole: bool) -> str:
     )
 
 
-def _measure(tables: tb.Tables, head: dict, stat: dict, figures: Figures, stage: str) -> Html:
+def _measure(tables: tb.Tables, head: dict, stat: dict, figures: Figures, stage: str, whole: bool) -> Html:
     spec = charts.distribution_spec(tables, head["measure_no"])
     words = "Left minus right" if str(head.get("of")).startswith(CROSS) else "Both sides together"
     drawn = figures.add(spec, join([tag("b", words), ", ", spec["title"]["subtitle"]]), paper_px=275) if spec else ""
@@ -62,7 +62,7 @@ def _measure(tables: tb.Tables, head: dict, stat: dict, figures: Figures, stage:
         "article",
         tag("h3", head["name"]),
         _difference(stat) if words.startswith("Left") else "",
-        tag("div", _effects(tables, head, stage), drawn, cls="two"),
+        tag("div", _effects(tables, head, stage, whole), drawn, cls="two"),
         cls="measure",
     )
 
@@ -75,8 +75,11 @@ def _difference(stat: dict) -> Html:
     return tag("p", text + ".", cls="small")
 
 
-def _effects(tables: tb.Tables, head: dict, stage: str) -> Html:
-    """What drives the measure: a row a source, the effects of its left and of its right feature beside each other."""
+def _effects(tables: tb.Tables, head: dict, stage: str, whole: bool) -> Html:
+    """What drives the measure: a row a source, the effects of its left and of its right feature beside each other.
+
+    Where one body carries both wheels every feature is there once.
+    """
     ranked = tb.ranked(tables, head["measure_no"], stage)
     basis = tb.basis_of(ranked)
     if basis is None:
@@ -86,8 +89,11 @@ def _effects(tables: tb.Tables, head: dict, stage: str) -> Html:
     left_out = len(ranked) - len(leading)
     unit = unit_text(head["unit"]) or "its unit"
     return table(
-        ["Source", "Share" if basis.is_share else "µ*", "Left", "Right"],
-        [[source_name(row["source"]), tb.strength_text(row, basis), *sided(row)] for row in leading],
+        ["Source", "Share" if basis.is_share else "µ*", *(("Effect",) if whole else ("Left", "Right"))],
+        [
+            [source_name(row["source"]), tb.strength_text(row, basis), *(unsided(row) if whole else sided(row))]
+            for row in leading
+        ],
         words=4,
         caption=f"What drives it; effects in {unit} per mm or ° of the feature"
         + (f". {left_out} more stay under 1 %" if left_out else ""),
@@ -96,30 +102,43 @@ def _effects(tables: tb.Tables, head: dict, stage: str) -> Html:
 
 def sided(row: dict) -> tuple[str, str]:
     """The effects of a row's left and right feature as text; a feature that both sides share stands in the first."""
-    axes, effect = row.get("effect_axes") or [], row.get("effect") or []
-    if not effect:
+    found: dict[str, list] = {"left ": [], "right ": [], "": []}
+    for axis, value in _pairs(row):
+        side = next(name for name in found if axis.startswith(name))
+        found[side].append((axis.removeprefix(side), value))
+    if not any(found.values()):
         return "no single slope", "–"
-    found = {"left ": [], "right ": [], "": []}
-    for axis, value in zip(axes, effect, strict=False):
-        side = next(name for name in found if str(axis).startswith(name))
-        found[side].append((str(axis).removeprefix(side), value))
-    whole = max((abs(value) for _, value in zip(axes, effect, strict=False) if finite(value) is not None), default=0.0)
+    whole = max((abs(value) for _, value in _pairs(row) if finite(value) is not None), default=0.0)
     texts = {side: _steps(row, pairs, whole) for side, pairs in found.items()}
     return (texts["left "], texts["right "]) if found["left "] else (f"both: {texts['']}", "the same part")
+
+
+def unsided(row: dict) -> tuple[str]:
+    """All effects of a row as one text."""
+    pairs = _pairs(row)
+    whole = max((abs(value) for _, value in pairs if finite(value) is not None), default=0.0)
+    return (_steps(row, pairs, whole) or "no single slope",)
+
+
+def _pairs(row: dict) -> list[tuple]:
+    return [(str(axis), value) for axis, value in zip(row.get("effect_axes") or [], row.get("effect") or [], strict=False)]
 
 
 def _steps(row: dict, pairs: list[tuple], whole: float) -> str:
     """`x +0.020, y −0.310`, all with the decimals that the row's largest asks for."""
     texts = aligned([*(value for _, value in pairs), whole], 3)[:-1]
-    signed = (f"+{text}" if finite(value) and value > 0 and text.strip("0.") else text
-              for (_, value), text in zip(pairs, texts, strict=True))  # fmt: skip
+    signed = (
+        f"+{text}" if finite(value) and value > 0 and text.strip("0.") else text
+        for (_, value), text in zip(pairs, texts, strict=True)
+    )
     words = (_axis_word(row, axis) for axis, _ in pairs)
     return ", ".join(f"{word}{NBSP}{text}" if word else text for word, text in zip(words, signed, strict=True))
 
 
 def _axis_word(row: dict, axis: str) -> str:
     if str(row.get("source")).startswith("alignment."):
-        return ""
+        side = axis.split(" ")[0]
+        return side if side in ("left", "right") else ""
     return axis.replace("_", " ").replace("length", "longer")
 
 

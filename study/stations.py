@@ -120,24 +120,32 @@ class Hand:
             return design
         return Station(spot, np.eye(3), self.corner.origin[:, None], None, 0.0, np.zeros((6, 0)))
 
+    def _where(self, spot):
+        """The position as it was asked for: that of a right corner is mirrored."""
+        sign = -1.0 if self.name == "right" else 1.0
+        return (
+            f"bump {spot.bump_mm:g} mm, roll {sign * spot.roll_deg + 0.0:g}°, rack {sign * spot.rack_mm + 0.0:g} mm"
+            + (", right side" if self.name == "right" else "")
+        )  # fmt: skip
+
     def _judge(self, spot, worst):
         if not worst <= kernel.TOLERANCE_MM:
+            how = f"rows left open by {worst:.3g} mm" if np.isfinite(worst) else "it would go over a dead point"
             raise PositionError(
-                f"bump {spot.bump_mm:g} mm, roll {spot.roll_deg:g}°, rack {spot.rack_mm:g} mm: the nominal linkage does "
-                f"not reach this position (rows left open by {worst:.3g} mm); ask for less travel"
+                f"{self._where(spot)}: the nominal linkage does not reach this position ({how}); ask for less travel"
             )
 
     def _judge_branch(self, spot, sign, jacobian):
         values = kernel.singular_values(jacobian)
         if not values[-1] > LEAST_MOBILITY * values[0]:
             raise PositionError(
-                f"bump {spot.bump_mm:g} mm, roll {spot.roll_deg:g}°, rack {spot.rack_mm:g} mm: the position is singular "
+                f"{self._where(spot)}: the position is singular "
                 f"(least over greatest singular value {values[-1] / values[0]:.1e}): the links do not hold the wheel; check points"
             )
         design = self._stations.get(Spot(0.0, 0.0, 0.0))
         if design is not None and not spot.locked and sign != design.sign:
             raise PositionError(
-                f"bump {spot.bump_mm:g} mm, roll {spot.roll_deg:g}°, rack {spot.rack_mm:g} mm: the nominal linkage has "
+                f"{self._where(spot)}: the nominal linkage has "
                 "gone over a dead point on the way there; ask for less travel"
             )
 

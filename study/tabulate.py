@@ -78,7 +78,7 @@ class _Stage:
     def _analysed(self):
         m = len(self.measures)
         bad = self.status > 0
-        result = self.work.method.analyse(self.model.problem, self.drawn[:m], seed=self.study.seed, unassembled=bad)
+        result = self.work.method.analyse(self.work.problem, self.drawn[:m], seed=self.study.seed, unassembled=bad)
         self.facts["unassembled"] += int(bad.sum())
         self.facts["dropped_blocks"] = max(self.facts["dropped_blocks"], int(getattr(result, "dropped_blocks", 0) or 0))
         if getattr(result, "withheld", False):
@@ -185,6 +185,7 @@ class _Stage:
         good = None
         if summary is not None and limited and self.method != "linear":  # a linear model knows no stops and no failures
             good = spread.good_share(values, limits, bad[0] | bad[1])
+            each = spread.good_share(values, limits, bad[0])  # a stop that was reached is no fault of a measure inside its limits
         self._facts_of(good, bad)
         for i, measure in enumerate(self.measures):
             row = self._stats_row(i, measure)
@@ -196,10 +197,10 @@ class _Stage:
                 self._histogram(i, values[i])
             if good is not None and measure.limits:
                 row |= {
-                    "good_share": float(good.measure_share[i]),
-                    "good_low": float(good.measure_low[i]),
-                    "good_high": float(good.measure_high[i]),
-                    "lost_share": float(good.lost[i]),
+                    "good_share": float(each.measure_share[i]),
+                    "good_low": float(each.measure_low[i]),
+                    "good_high": float(each.measure_high[i]),
+                    "lost_share": float(each.lost[i]),
                 }
             self.out["stats"].append(row)
         if summary is not None and self.method == "spread":
@@ -210,7 +211,7 @@ class _Stage:
         m = len(self.measures)
         if self.drawn is None:
             return self._linear_draws(), (np.zeros(LINEAR_DRAWS, bool), np.zeros(LINEAR_DRAWS, bool))
-        rows = self.work.method.independent_rows(self.model.problem, self.study.size)
+        rows = self.work.method.independent_rows(self.work.problem, self.study.size)
         a = (self.drawn.shape[0] - m) // 2
         ran_out = self.drawn[m + a :, rows].any(axis=0)
         return self.drawn[:m, rows], (self.status[rows] > 0, ran_out)
@@ -277,22 +278,22 @@ class _Stage:
             })  # fmt: skip
 
     def _demand(self):
+        """What independent builds ask of the adjusters; a screening walk is no sample of builds and has none."""
         m = len(self.measures)
-        rows = self.work.method.independent_rows(self.model.problem, self.study.size)
-        rows = rows if len(rows) else np.arange(self.drawn.shape[1])
+        rows = self.work.method.independent_rows(self.work.problem, self.study.size)
         a = (self.drawn.shape[0] - m) // 2
-        names = [
-            (target, by, name)
-            for name, hand in self.work.after.hands.items() for target, by in zip(hand.bench.targets, hand.bench.by, strict=True)
-        ]  # fmt: skip
-        for k, (target, by, hand) in enumerate(names):
+        hands = self.work.after.hands
+        names = [(name, hand.bench, k) for name, hand in hands.items() for k in range(len(hand.bench.by))]
+        for k, (hand, bench, number) in enumerate(names if len(rows) else ()):
             settings, out = self.drawn[m + k, rows], self.drawn[m + a + k, rows]
             sound = settings[np.isfinite(settings) & (self.status[rows] == 0)]
             if len(sound):
-                side = f" ({hand})" if len(self.work.after.hands) > 1 else ""
+                step = bench.step[number]
+                sound = step * np.round(sound / step) if step else sound
                 self.out["demand"].append({
-                    "adjuster": target + side, "by": by, "unit": "mm", "low": float(sound.min()), "high": float(sound.max()),
-                    **_quantiles(sound, QUANTILES), "ran_out_share": float(np.nanmean(out)),
+                    "adjuster": bench.targets[number] + (f" ({hand})" if len(hands) > 1 else ""), "by": bench.by[number],
+                    "unit": "mm", "low": float(sound.min()), "high": float(sound.max()), **_quantiles(sound, QUANTILES),
+                    "ran_out_share": float(np.nanmean(out)),
                 })  # fmt: skip
 
     def _worst(self):

@@ -13,19 +13,18 @@ import numpy as np
 
 from catalog.errors import InputError
 from study.bands import builds_along
-from study.linear_steps import step_moves
 from study.methods import METHODS, SAMPLED, linear, spread
 from study.methods.problem import Problem
 from study.position_words import position_text
 from study.response import Response, requests_of
+from study.smooth import Smooth
 from study.stations import PositionError, Spot
 from study.study_measures import Measure
 from study.verdicts import AS_DRAWN, VERDICT_BUILDS, field_with, good_flags, judged, looser
-from study.zone_field import ZoneField
-from study.zones import Zone
 
 BUILDS_PER_TASK = 4096
 CURVE_BUILDS = 256
+SMOOTH = ("sobol", "morris")  # methods that split variance: taken without the jumps of stepped adjusters
 LOTS, LOT_BUILDS = 256, 65_536  # as many lots as the builds allow, LOTS at the most and 16 at the least
 CURVE_KEYS = {
     "bump": ("toe_deg", "camber_deg", "roll_centre_height_mm"),
@@ -74,6 +73,7 @@ class StudyWork:
         self.method = METHODS[study.method]
         self.after = Response(geometry, study, stage=self.stages[-1])
         self.model = self.after.model
+        self.warnings: list[str] = []
         self._judge_limits()
 
     def _judge_limits(self):
@@ -85,6 +85,13 @@ class StudyWork:
                     f'measure "{measure.name}": has limits, but {measure.of} has no value on this geometry there '
                     f"({position_text(measure)}); give it a position where it is defined, or leave it out"
                 )
+            if not np.isfinite(value):
+                self.warnings.append(f"{measure.name} has no value on the drawing ({position_text(measure)})")
+            elif measure.limits and not measure.limits[0] <= value <= measure.limits[1]:
+                low, high = measure.limits
+                self.warnings.append(f"{measure.name}: the drawing's own {value:.4g} is outside its limits {low:g} to {high:g}")
+        if self.model.perfect:
+            self.warnings.append(f"held perfect, since [errors] does not name them: {', '.join(self.model.perfect)}")
 
     @cached_property
     def before(self) -> Response:
@@ -118,15 +125,15 @@ class StudyWork:
         return max(16, min(LOTS, LOT_BUILDS // self.study.cars))
 
     def _cuts(self):
-        block = self.method.block(self.model.problem)
-        blocks = self.method.builds(self.model.problem, self.study.size) // block
+        block = self.method.block(self.problem)
+        blocks = self.method.builds(self.problem, self.study.size) // block
         step = max(1, BUILDS_PER_TASK // block)
         return [(first, min(step, blocks - first)) for first in range(0, blocks, step)]
 
     def builds(self, task: Task) -> int:
         """How many builds a task runs (of a search: those it starts with, since it goes on until it has found)."""
         if task.kind == "draws":
-            return task.count * self.method.block(self.model.problem)
+            return task.count * self.method.block(self.problem)
         if task.kind == "curves":
             return CURVE_BUILDS + 1
         if task.kind == "lots":
@@ -137,7 +144,7 @@ class StudyWork:
 
     def first_build(self, task: Task) -> int:
         """Number of a task's first build among those of its kind."""
-        return task.first * self.method.block(self.model.problem) if task.kind == "draws" else 0
+        return task.first * self.method.block(self.problem) if task.kind == "draws" else 0
 
     def response(self, stage) -> Response:
         return self.after if stage == self.stages[-1] else self.before
@@ -161,12 +168,25 @@ class StudyWork:
     def _stepless(self):
         return Response(self.geometry, self.study, stage="after", stepless=True)
 
+    @cached_property
+    def smooth(self) -> Smooth:
+        """The study at its last stage without steps: what shares are taken of."""
+        return Smooth(self.model, self.stepless(self.stages[-1]))
+
+    @property
+    def problem(self) -> Problem:
+        """The scalars that the method draws: for shares of variance the residuals of stepped adjusters too."""
+        return self.smooth.problem if self.study.method in SMOOTH else self.model.problem
+
     def _run_draws(self, task):
-        unit = self.method.draw(
-            self.model.problem, size=self.study.size, seed=self.study.seed, first=task.first, count=task.count
-        )
-        rule = self.model.field.walk if getattr(self.method, "WALKS", False) else self.model.field.to_errors
-        found = self.response(task.stage).evaluate(rule(unit.T))
+        unit = self.method.draw(self.problem, size=self.study.size, seed=self.study.seed, first=task.first, count=task.count)
+        smooth = self.study.method in SMOOTH
+        field = self.smooth.field if smooth else self.model.field
+        errors = (field.walk if getattr(self.method, "WALKS", False) else field.to_errors)(unit.T)
+        if smooth and task.stage == "after":
+            found = self.smooth.evaluate(errors)
+        else:
+            found = self.response(task.stage).evaluate(errors[: self.model.scalars])
         return Outcome(np.concatenate((found.values, found.settings, found.ran_out)), found.status)
 
     def _run_lots(self, task):
@@ -197,29 +217,19 @@ class StudyWork:
 
     def _run_worst(self, task):
         """Rows: per measure and direction the value, then the errors; last the builds run and those without a value."""
-        response, smooth = self.response(task.stage), self.stepless(task.stage)
-        if smooth is response:
-            found = self.method.search(lambda e: response.evaluate(e).values, self.model.field, seed=self.study.seed)
+        response = self.response(task.stage)
+        if self.smooth.residuals and task.stage == "after":
+            found = self._worst_by_steps(response, self.smooth)
         else:
-            found = self._worst_by_steps(response, smooth)
+            found = self.method.search(lambda e: response.evaluate(e).values, self.model.field, seed=self.study.seed)
         rows = np.concatenate((found.values[:, :, None], found.errors), axis=2)
         counts = np.repeat([[float(found.builds)], [float(found.unassembled)]], rows.shape[2], axis=1)
         return Outcome(np.concatenate((rows.reshape(-1, rows.shape[2]), counts)), np.zeros(rows.shape[2], np.uint8))
 
     def _worst_by_steps(self, response, smooth):
         """Search without steps, what a step leaves being further scalars; then the worst of real builds about there."""
-        moves = [move for name, hand in smooth.hands.items() for move in _step_bands(hand, name, smooth.starts)]
-        field = ZoneField(self.model.field.zones + tuple(Zone("length", (half,)) for half, _, _ in moves))
-        d = self.model.scalars
-
-        def evaluate(errors):
-            own = errors[:d].copy()
-            for left, (_, rows, column) in zip(errors[d:], moves, strict=True):
-                own[rows] += column[:, None] * left
-            return smooth.evaluate(own).values
-
-        found = self.method.search(evaluate, field, seed=self.study.seed)
-        found = replace(found, errors=found.errors[:, :, :d])
+        found = self.method.search(lambda e: smooth.evaluate(e).values, smooth.field, seed=self.study.seed)
+        found = replace(found, errors=found.errors[:, :, : self.model.scalars])
         return self.method.confirm(lambda e: response.evaluate(e).values, self.model.field, found, seed=self.study.seed)
 
     # --- curves
@@ -271,13 +281,3 @@ def _keep_freed_memory():
     then stop costing page faults (a third of its time). Elsewhere this is one array made and dropped.
     """
     np.empty(2**25 - 2**14, np.uint8)
-
-
-def _step_bands(hand, name, starts):
-    """(half a step in mm, rows of the stepped angles' bands, degrees per mm (S,)) of every stepped adjuster of a hand."""
-    stepped = np.flatnonzero(hand.bench.step)
-    rows = [hand.bands[name][hand.bench.targets[k]] for k in stepped]
-    if not len(stepped):
-        return []
-    apart = step_moves(starts[name][1], stepped)
-    return [(hand.bench.step[k] / 2.0, rows, apart[:, j]) for j, k in enumerate(stepped)]

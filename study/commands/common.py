@@ -1,12 +1,15 @@
 """What the commands share: options, printing, and finding a geometry."""
 
 import json
+import math
 import re
 import sys
 from pathlib import Path
 from typing import Annotated
 
 import typer
+
+from catalog.errors import InputError
 
 CatalogOption = Annotated[
     str | None,
@@ -16,6 +19,7 @@ CatalogOption = Annotated[
 ]
 JsonOption = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
 
+UNBROKEN = ("measure", "source", "geometry", "study", "point")  # columns whose words are not broken
 WIDTH_UNSEEN = 120  # columns where the output goes to a file or a pipe
 _CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]")
 
@@ -62,7 +66,7 @@ def print_table(title, columns, rows, *, caption=None) -> None:
     )
     for heading, justify in columns:
         table.add_column(
-            heading, justify=justify, overflow="fold", no_wrap=len(table.columns) == 0 or justify == "right"
+            heading, justify=justify, overflow="fold", no_wrap=heading in UNBROKEN or justify == "right"
         )
     for row in rows:
         table.add_row(*(cell if isinstance(cell, Text) else Text(clean(cell)) for cell in row))
@@ -85,6 +89,17 @@ def geometry_named(name: str, catalog: str | None):
     with Catalog(catalog).read() as con:
         found = revisions.find(con, name)
         return revisions.load(con, found), found.spec
+
+
+class OptionError(InputError):
+    """An option whose value cannot be used."""
+
+
+def finite(options: dict[str, float]) -> None:
+    """Refuse options that are no finite numbers. Raises OptionError."""
+    for name, value in options.items():
+        if not math.isfinite(value):
+            raise OptionError(f"{name} {value}: must be a finite number")
 
 
 def by_whom(given: str | None) -> str:

@@ -1,5 +1,6 @@
 """`critical`: which pivots matter."""
 
+import math
 from typing import Annotated
 
 import typer
@@ -97,6 +98,8 @@ def print_ranking(dossier, *, stage=None, most=6) -> None:
     )
     for note in facts["notes"] or ():
         print(f"note: {clean(note)}")
+    if facts["method"] == "worst":
+        _print_worst(dossier, stage)
     for stats in dossier.of_stage("stats", stage):
         _print_measure(dossier, stage, stats, most)
     _print_failures(dossier, stage)
@@ -114,15 +117,18 @@ def _print_measure(dossier, stage, stats, most):
     other = "before" if stage == "after" else "after"
     share, heading = _share_of(rows)
     elsewhere = {row["source"]: row for row in dossier.of_stage("ranking", other, stats["measure_no"])}
-    columns = [("", "right"), ("source", "left"), (heading, "right"), ("linear", "right")]
+    beside = heading != LINEAR_SHARE
+    columns = [("", "right"), ("source", "left"), (heading, "right")] + ([("linear", "right")] if beside else [])
     columns += [(f"{other}\nalignment", "right")] if elsewhere else []
     columns += [("signed effect per mm (or degree)", "left")]
+    shown = [row for row in rows[:most] if not _is_nothing(row)]
     lines = []
-    for row in rows[:most]:
-        line = ["≈" if row["tied"] else str(row["rank"]), row["source"], share(row), _percent(row["linear_share"])]
+    for row in shown:
+        line = ["≈" if row["tied"] else str(row["rank"]), row["source"], share(row)]
+        line += [_percent(row["linear_share"])] if beside else []
         line += [share(elsewhere[row["source"]], False) if row["source"] in elsewhere else "–"] if elsewhere else []
         lines.append([*line, _effect(row)])
-    print_table(_heading(stats, stage), columns, lines, caption=_rest(rows[most:]))
+    print_table(_heading(stats, stage), columns, lines, caption=_rest(rows[len(shown) :]))
 
 
 def _share_of(rows):
@@ -131,7 +137,18 @@ def _share_of(rows):
         return lambda row, ends=True: _interval(row["st"], row["st_low"], row["st_high"], ends), "share ST\n(95 %)"
     if any(row["mu_star"] is not None for row in rows):
         return lambda row, ends=True: number(row["mu_star"]), "mu*"
-    return lambda row, ends=True: _percent(row["linear_share"]), "share"
+    return lambda row, ends=True: _percent(row["linear_share"]), LINEAR_SHARE
+
+
+LINEAR_SHARE = "linear\nshare"
+
+
+def _is_nothing(row):
+    """A source whose share would be printed as nothing."""
+    if row["mu_star"] is not None:
+        return False
+    share = row["st"] if row["st"] is not None else row["linear_share"]
+    return share is None or share < 0.005
 
 
 def _interval(value, low, high, ends):
@@ -171,7 +188,36 @@ def _heading(stats, stage):
 def _rest(rows):
     shares = [row["st"] if row["st"] is not None else row["linear_share"] for row in rows]
     known = [s for s in shares if s is not None]
-    return f"{len(rows)} more sources, none above {100 * max(known):.0f} %" if known else None
+    if not known:
+        return "nothing here moves it" if rows else None
+    most = 100 * max(known)
+    return f"{len(rows)} more sources, each under {max(1, math.ceil(most)):.0f} %"
+
+
+def _print_worst(dossier, stage):
+    """The worst build found of each measure and what it is made of, by what each error does there."""
+    for stats in dossier.of_stage("stats", stage):
+        rows = dossier.of_stage("worst", stage, stats["measure_no"])
+        effects = {
+            (r["source"], axis): effect
+            for r in dossier.of_stage("ranking", stage, stats["measure_no"])
+            for axis, effect in zip(r["effect_axes"], r["effect"] or (), strict=False)
+        }  # fmt: skip
+        for direction in ("low", "high"):
+            found = [r for r in rows if r["direction"] == direction and r["value"] is not None]
+            if found:
+                parts = sorted(found, key=lambda r: -abs(r["error"] * effects.get((r["source"], r["axis"]), 0.0)))[:4]
+                made = ", ".join(f"{r['source']} {r['axis']} {r['error']:+.2f}" for r in parts) if effects else "see the sheet"
+                print(f"{clean(stats['measure'])}: {'lowest' if direction == 'low' else 'highest'} {number(found[0]['value'])} {stats['unit']}"
+                      f"{_in_limits(found[0]['value'], stats)}; most of it by {made}")  # fmt: skip
+
+
+def _in_limits(value, stats):
+    low, high = stats["limit_low"], stats["limit_high"]
+    if low is None and high is None:
+        return ""
+    inside = (low is None or value >= low) and (high is None or value <= high)
+    return " (inside limits)" if inside else " (OUTSIDE limits)"
 
 
 def _print_failures(dossier, stage):
@@ -220,6 +266,9 @@ def _print_verdicts(dossier):
         print(f"may be opened together, {share} good: {', '.join(facts['open_together'])}")
     elif any(r["verdict"] == "open" for r in rows):
         print("no set of these may be opened together")
+    free = [r["measure"] for r in dossier.of_stage("stats", dossier.stages[-1]) if r["limit_low"] is None and r["limit_high"] is None]
+    if free:
+        print(f"not guarded by these verdicts, since they have no limits: {clean(', '.join(free))}")
 
 
 def _made(zone, process):
@@ -235,10 +284,10 @@ def _print_good(dossier):
         low, high = 100 * facts["all_cars_low"], 100 * facts["all_cars_high"]
         text += f"; chance that all {dossier.asked.cars} cars are: {100 * facts['all_cars']:.1f} % ({low:.1f}–{high:.1f})"
     print(text)
-    lost = [r for r in dossier.of_stage("stats", dossier.stages[-1]) if r["lost_share"]]
+    lost = [(r["lost_share"], r["measure"]) for r in dossier.of_stage("stats", dossier.stages[-1]) if r["lost_share"]]
+    lost += [(r["ran_out_share"], f"{r['by']} running out of range") for r in dossier.tables["demand"] if r["ran_out_share"]]
     if lost:
-        worst = sorted(lost, key=lambda r: -r["lost_share"])
-        print("lost to: " + ", ".join(f"{clean(r['measure'])} {100 * r['lost_share']:.1f} %" for r in worst))
+        print("lost to: " + ", ".join(f"{clean(what)} {100 * share:.1f} %" for share, what in sorted(lost, reverse=True)))
 
 
 def _over_catalog(store, as_json):

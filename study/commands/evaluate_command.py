@@ -4,7 +4,16 @@ from typing import Annotated
 
 import typer
 
-from study.commands.common import CatalogOption, JsonOption, clean, geometry_named, number, print_json, print_table
+from study.commands.common import (
+    CatalogOption,
+    JsonOption,
+    clean,
+    finite,
+    geometry_named,
+    number,
+    print_json,
+    print_table,
+)
 
 
 def run(
@@ -18,6 +27,7 @@ def run(
     """Print every measure of a geometry at one position; `holdtight measures` tells what each means."""
     from study.nominal import evaluate
 
+    finite({"--bump": bump, "--roll": roll, "--rack": rack})
     record, label = geometry_named(geometry, catalog)
     found = evaluate(record, bump_mm=bump, roll_deg=roll, rack_mm=rack)
     if as_json:

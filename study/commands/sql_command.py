@@ -7,7 +7,7 @@ from typing import Annotated
 import typer
 
 from catalog.errors import InputError
-from study.commands.common import WIDTH_UNSEEN, CatalogOption, JsonOption, clean, number, print_json, print_table
+from study.commands.common import WIDTH_UNSEEN, CatalogOption, JsonOption, clean, print_json, print_table
 from study.commands.tabular import json_value, unique, write_csv
 
 
@@ -156,5 +156,5 @@ def _shown(value):
     if isinstance(value, bool):
         return "yes" if value else "no"
     if isinstance(value, float):
-        return number(value, 6) if abs(value) != float("inf") else str(value)
+        return f"{value:.6g}"
     return str(json_value(value))

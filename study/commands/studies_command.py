@@ -30,7 +30,7 @@ def run(as_json: JsonOption = False, catalog: CatalogOption = None) -> None:
             str(j.id),
             j.title,
             j.geometry,
-            f"{j.method} {j.size}",
+            f"{j.method} {j.size}" if j.method in ("sobol", "morris", "spread") else j.method,
             j.state + (f": {j.error}" if j.error else ""),
             _builds(j),
         ]

@@ -69,17 +69,19 @@ def search(evaluate: Evaluate, field: ZoneField, *, seed: int, starts: int = 3, 
     return _best(nominal, at, score, measure, sign, counted)
 
 
-def confirm(evaluate: Evaluate, field: ZoneField, found: Worst, *, seed: int, near: int = 48, drawn: int = 4096) -> Worst:
+def confirm(evaluate: Evaluate, field: ZoneField, found: Worst, *, seed: int, near: int = 128, drawn: int = 4096) -> Worst:
     """The worst of real builds: those that a search on a smooth stand-in found, others near them, and drawn ones.
 
-    Where adjusters go by steps a build's values jump, so no gradient leads to the worst of them. `near` builds on the
-    last eighth of the way from the middle of the zones to each found one pass through all phases of the steps.
+    Where adjusters go by steps a build's values jump, so no gradient leads to the worst of them. `near` builds about each
+    found one, every zone's error on the last fifth of its way from the middle, pass through all phases of the steps.
     """
     counted = _Counted(evaluate)
     ends = found.errors.reshape(-1, field.n_scalars).T
-    way = np.linspace(0.875, 1.0, near)
+    way = np.empty((field.n_scalars, near))
+    for rows, part in zip(field.rows, np.random.default_rng([seed, 5]).uniform(0.8, 1.0, (len(field.rows), near)), strict=True):
+        way[rows] = part
     middle = field.extreme(np.zeros((field.n_scalars, 1)))
-    close = (middle[:, :, None] + (ends - middle)[:, :, None] * way).reshape(field.n_scalars, -1)
+    close = (middle[:, :, None] + (ends - middle)[:, :, None] * way[:, None]).reshape(field.n_scalars, -1)
     problem = Problem(np.zeros(field.n_scalars, dtype=int), 1)
     others = field.to_errors(spread.draw(problem, size=drawn, seed=seed, first=0, count=drawn).T)
     errors = np.hstack([close, others])

@@ -71,6 +71,7 @@ MEASURES = [
         {"alignment.camber": 0.93, "alignment.toe": 0.03, "upright.hub_axis": 0.02},
     ),
 ]
+AXLE = ("roll_centre", "cross", "track", "ackermann")
 MORE = [
     "caster_deg",
     "scrub_radius_mm",
@@ -125,8 +126,10 @@ def _ranking(number: int, measure: tuple, stage: str, rng: np.random.Generator) 
     for rank, (source, share) in enumerate(shares.items(), start=1):
         kind = SOURCES[source]
         axes = {"xyz": ["x", "y", "z"], "length": ["length"], "tilt": ["tilt_1", "tilt_2"]}[kind]
+        if measure[1].startswith(AXLE):
+            axes = [f"{side} {axis}" for side in ("left", "right") for axis in axes]
         scale = measure[5] * math.sqrt(share) / 0.4
-        effect = [float(scale * w) for w in rng.normal(size=len(axes)) * [0.2, 0.4, 1.0][-len(axes) :]]
+        effect = [float(scale * w) for w in rng.normal(size=len(axes)) * np.resize([1.0, 0.4, 0.2], len(axes))[::-1]]
         half = 0.012 + 0.05 * share
         signed = measure[0] != "bump steer over 30 mm"
         rows.append(
@@ -188,7 +191,7 @@ def _stats(number: int, measure: tuple, stage: str) -> dict:
         "measure": name,
         "of": of,
         "unit": unit,
-        "side": "axle" if of.startswith(("roll", "cross", "track")) else "left",
+        "side": "axle" if of.startswith(AXLE) else "left",
         "position": None,
         "nominal": nominal,
         "mean": mean,

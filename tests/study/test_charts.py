@@ -187,17 +187,6 @@ def test_axle_sources_stand_at_their_own_wheel():
         geometry, "axle.wheel_centre_left")[1]  # fmt: skip
 
 
-def test_a_solid_axle_is_drawn_once(tables):
-    points = {"a_inner": (300.0, 400.0, 200.0), "a_outer": (0.0, 400.0, 200.0)}
-    geometry = sample_study.geometry() | {
-        "left": points,
-        "right": points,
-        "lines": [("a_inner", "a_outer", "a")],
-    }
-    rules = charts.view_spec(geometry, tables, "front")["datasets"]["rules"]
-    assert sum(rule["w"] == 2.4 for rule in rules) == 1
-
-
 def test_callouts_neither_overlap_nor_leave_the_drawing():
     spots = [callouts.Spot(str(i), 100.0 + i, 150.0 + i % 3, ("a name", "41 %")) for i in range(10)]
     placed = callouts.place(spots, width=400.0, height=260.0, left_edge=60.0, right_edge=200.0)
@@ -207,6 +196,76 @@ def test_callouts_neither_overlap_nor_leave_the_drawing():
         )
         assert all(a[1] <= b[0] + 1e-9 for a, b in zip(column, column[1:], strict=False))
         assert not column or (column[0][0] >= 0 and column[-1][1] <= 260)
+
+
+def test_callouts_leave_free_what_lies_below_them():
+    spots = [callouts.Spot(str(i), 100.0, 240.0, ("a name",)) for i in range(4)]
+    placed = callouts.place(spots, width=400.0, height=260.0, left_edge=60.0, right_edge=200.0, left_height=180.0)
+    assert max(c.y + c.spot.height / 2 for c in placed) <= 180.0
+
+
+def test_curves_without_builds_are_lines_alone():
+    rows = [{"axis": "bump", "x": float(x), "key": "toe_deg", "unit": "deg", "side": "left", "nominal": y}
+            for x, y in enumerate((0.1, None, 0.3, 0.4))]  # fmt: skip
+    spec = charts.curve_spec({"curves": rows}, "bump", "toe_deg", held="rack 5 mm held")
+    assert spec["title"]["subtitle"] == "nominal, left side; rack 5 mm held"
+    assert spec["datasets"]["band"] == [] and [row["x"] for row in spec["datasets"]["dots"]] == [0.0]
+
+
+def test_panels_keep_their_data_apart(specs):
+    pair = [specs["matrix"], specs["demand-mm"]]
+    spec = charts.panels(pair, title="Two", columns=1)
+    assert len(spec["datasets"]) == sum(len(one["datasets"]) for one in pair)
+    assert all(one["description"] in spec["description"] for one in pair)
+    text = json.dumps(spec["concat"])
+    assert all(f'"{name}"' in text for name in spec["datasets"])
+    assert charts.panels(pair[:1], title="One") is pair[0]
+
+
+PLACES = {"over": "bump", "against": "rack", "over_at": (-10.0, 10.0), "against_at": (-5.0, 0.0, 5.0)}
+
+
+def test_a_map_of_both_signs_shades_about_zero_and_writes_the_sign():
+    spec = charts.map_spec([[-2.0, None, 1.0], [0.0, 0.5, 1.0]], **PLACES, key="toe_deg", unit="deg")
+    texts = {(cell["x"], cell["y"]): cell["text"] for cell in spec["datasets"]["texts"]}
+    assert texts["−5", "−10"] == "−2.00" and texts["5", "10"] == "+1.00" and texts["−5", "10"] == "0.00"
+    assert texts["0", "−10"] == "–" and len(spec["datasets"]["cells"]) == 5
+    assert '"domain": [-2.0, 2.0]' in json.dumps(spec) and "blueorange" in json.dumps(spec)
+    assert "least −2.00° at bump −10 mm, rack travel −5 mm" in spec["description"]
+
+
+def test_a_map_of_one_sign_shades_by_brightness():
+    spec = charts.map_spec([[1.0, 2.0, 3.0], [2.0, 3.0, 4.0]], **PLACES, key="track_mm", unit="mm")
+    assert "cividis" in json.dumps(spec)
+    assert charts.map_spec([[None] * 3] * 2, **PLACES, key="toe_deg", unit="deg") is None
+
+
+def test_small_cells_carry_every_second_value():
+    wide = {"over": "bump", "against": "rack", "over_at": (0.0, 1.0), "against_at": tuple(map(float, range(40)))}
+    spec = charts.map_spec([[i / 7 for i in range(40)]] * 2, **wide, key="track_mm", unit="mm")
+    assert len(spec["datasets"]["cells"]) == 80 > len(spec["datasets"]["texts"]) >= 20
+
+
+def rolling(**changes):
+    row = {"name": "some@1", "linkage": "strut", "swing_arm_mm": 1500.0, "track_mm": 1000.0, "roll_camber": 0.67}
+    return row | changes
+
+
+def test_camber_in_roll_has_a_mark_a_geometry_and_the_rigid_relation():
+    rows = [rolling(), rolling(name="other@2", linkage="five-link", swing_arm_mm=-900.0, roll_camber=1.5)]
+    spec = charts.roll_camber_spec(rows)
+    assert [mark["rigid"] for mark in spec["datasets"]["marks"]] == pytest.approx([1 - 0.5 / 1.5, 1 + 0.5 / 0.9])
+    names = spec["datasets"]["names_left"] + spec["datasets"]["names_right"]
+    assert {name["t"] for name in names} == {"some@1", "other@2"}
+    branches = {row["branch"] for row in spec["datasets"]["curve"]}
+    assert branches == {"inboard", "outboard"}
+
+
+def test_what_has_no_swing_arm_is_named():
+    rows = [rolling(), rolling(name="axle@1", swing_arm_mm=None), rolling(name="flat@1", swing_arm_mm=2e4)]
+    lines = charts.roll_camber_spec(rows)["title"]["subtitle"]
+    assert "axle@1 (no swing arm)" in lines[1] and "flat@1 (swing arm of 20 tracks)" in lines[1]
+    assert charts.roll_camber_spec(rows[1:2]) is None
 
 
 def test_words():
@@ -265,7 +324,7 @@ def test_export_writes_all_four(specs, tmp_path):
     root = ElementTree.parse(files[0]).getroot()
     assert root.get("role") == "img" and root.get("aria-label") == 'a "b" <c> & d'
     assert root.find("{http://www.w3.org/2000/svg}title").text == "</title><script>x"
-    assert files[1].read_bytes().startswith(b"\x89PNG")
+    assert files[1].read_bytes().startswith(b"\x89PNG") and b'iTXtDescription' in files[1].read_bytes()
     assert files[2].read_bytes().startswith(b"%PDF")
     assert json.loads(files[3].read_text())["description"] == 'a "b" <c> & d'
 

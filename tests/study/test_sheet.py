@@ -8,7 +8,7 @@ from html.parser import HTMLParser
 
 import pytest
 
-from study import sheet, sheet_library
+from study import sheet, sheet_library, sheet_sides
 from tests.study import sample_study, sample_tables
 
 NASTY = '</script><b onload="x">&amp; <!-- \u2028'
@@ -105,13 +105,13 @@ def test_page_needs_no_network(page):
 def test_every_chart_has_a_label_and_a_box(page):
     boxes = {attrs["id"]: attrs for tag, attrs in Page(page).tags if attrs.get("class") == "chart"}
     specs = specs_of(page)
-    assert {item["id"] for item in specs} == set(boxes) and len(specs) == 3 + 1 + 8 + 4 + 1 + 1
+    assert {item["id"] for item in specs} == set(boxes) and len(specs) == 3 + 1 + 8 + 4 + 2 + 1 + 1
     assert all(attrs["role"] == "img" and len(attrs["aria-label"]) > 20 for attrs in boxes.values())
     assert all(item["spec"]["description"] for item in specs)
 
 
 def test_every_figure_has_its_numbers_as_a_table(page):
-    for name in ("where", "measures", "curves", "matrix", "together", "demand"):
+    for name in ("where", "measures", "curves", "sides", "matrix", "together", "demand"):
         part = page[page.index(f'<section id="{name}"') :]
         assert "<table" in part[: part.index("</section>")], name
 
@@ -175,10 +175,39 @@ def test_only_a_set_that_passed_together_is_proposed():
         "length.", "length .")  # fmt: skip
 
 
-def test_mirrored_sides_are_said():
-    assert "mirror images: a measure of the whole axle" in words_of(
-        render(study=sample_study.study() | {"sides": "mirrored"})
-    )
+def sides_of(text):
+    text = words_of(text)
+    return text[text.index("Left against right") : text.index("Adjusters")]
+
+
+def test_left_against_right_has_a_column_a_side(page):
+    text = sides_of(page)
+    assert "Cross camber" in text and "Roll centre height" in text and "Bump steer" not in text
+    assert "Left minus right" in text and "Standard deviation of the difference 0.0710°" in text
+    assert "95 % of the cars lie between" in text
+
+
+def test_effects_of_both_sides_stand_beside_each_other():
+    row = {"source": "chassis.a", "effect": [0.1, -2.0, 0.5, 1e-9], "effect_axes": ["left x", "left y", "right x", "right y"]}
+    assert sheet_sides.sided(row) == ("x\u00a0+0.10, y\u00a0−2.00", "x\u00a0+0.50, y\u00a00.00")
+    shared = {"source": "rack.mount", "effect": [0.1, 1.0], "effect_axes": ["x", "z"]}
+    assert sheet_sides.sided(shared) == ("both: x\u00a0+0.10, z\u00a0+1.00", "the same part")
+    assert sheet_sides.sided({"source": "a.b", "effect": None, "effect_axes": ["left x"]})[0] == "no single slope"
+
+
+def test_a_measure_asked_on_both_sides_names_the_one_that_tells_the_difference():
+    tables = sample_tables.tables(3)
+    row = next(r for r in tables["stats"] if r["measure_no"] == 2 and r["stage"] == "after")
+    tables["stats"].append(row | {"measure_no": 7, "measure": "right one", "side": "right", "mean": -1.5})
+    text = sides_of(render(tables))
+    assert "was asked for on both sides" in text and "ask for cross_camber_deg" in text
+
+
+def test_mirrored_sides_are_said_in_one_line():
+    text = sides_of(render(study=sample_study.study() | {"sides": "mirrored"}))
+    assert "built alike" in text and "Left minus right" not in text
+    solid = render(study=sample_study.study() | {"sides": "mirrored"}, geometry=sample_study.geometry() | {"linkage": "solid-axle"})
+    assert "Left against right" not in words_of(solid)
 
 
 def test_same_input_same_bytes():

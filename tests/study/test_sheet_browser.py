@@ -71,7 +71,7 @@ def test_every_chart_is_drawn_without_a_complaint(browser, page, width):
     assert empty == []
     assert (
         browser.execute_script("return document.querySelectorAll('.chart svg').length")
-        == 3 + 1 + 24 + 4 + 1 + 1
+        == 3 + 1 + 24 + 4 + 4 + 1 + 1
     )
     assert problems(browser) == []
 
