@@ -45,7 +45,8 @@ def _check_links(table: GeometryTable, linkage: Linkage, given: GivenPoints, sou
         refuse(source, "links", f"is not taken by linkage {table.linkage!r}", "give its points in [points].")
     if count != linkage.n_links:
         which = "over-constrained" if count > linkage.n_links else "under-constrained"
-        names = ", ".join(table.links) or "none"
+        names = ", ".join(name[:MOST_LETTERS] for name in [*table.links][:8]) or "none"
+        names += ", …" if count > 8 else ""
         refuse(
             source,
             "links",

@@ -16,7 +16,7 @@ SEPARATORS = {";": "semicolon", "\t": "tab", ",": "comma"}
 COLUMNS = ("name", "x", "y", "z")
 _TITLE = re.compile(r"(name|point|x|y|z)\s*(?:[\[(_\s]\s*(mm|m|in)\s*[\])]?)?", re.IGNORECASE)
 _NUMBER = re.compile(r"[+-]?(?:[0-9]+[.,]?[0-9]*|[.,][0-9]+)(?:[eE][+-]?[0-9]{1,4})?")
-_MOST_NAME = 200
+_MOST_NAME, _MOST_LINE = 200, 10_000
 
 
 @dataclass(frozen=True, slots=True)
@@ -113,14 +113,11 @@ def _separator(lines: list[str]) -> str:
 
 
 def _cells(line: str, separator: str, number: int, source: str) -> tuple[str, ...]:
-    opened = line.count('"') % 2 and re.search(rf'(?:^|{separator})\s*"', line)
-    try:
-        found = next(csv.reader([line], delimiter=separator, skipinitialspace=True))
-    except csv.Error:
-        opened = True
-    if opened:
+    if len(line) > _MOST_LINE:
+        refuse(source, f"line {number}, {shown(line)}", f"has over {_MOST_LINE} letters", "give one point a line.")
+    if line.count('"') % 2 and re.search(rf'(?:^|{separator})\s*"', line):
         refuse(source, f"line {number}, {shown(line)}", "has quotes that do not close", "correct the quotes.")
-    return tuple(cell.strip() for cell in found)
+    return tuple(cell.strip() for cell in next(csv.reader([line], delimiter=separator, skipinitialspace=True)))
 
 
 def _filled(cells: tuple[str, ...]) -> int:

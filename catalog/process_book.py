@@ -20,8 +20,11 @@ Zone = Mapping[str, Any]
 class ProcessError(InputError):
     """A process that breaks a rule, or one that is asked for in a wrong way."""
 
+    def __init__(self, text: str) -> None:
+        super().__init__(_printable(text))
 
-class ProcessNotFound(InputError):
+
+class ProcessNotFound(ProcessError):
     """No process of that name, or it is in force no more."""
 
 
@@ -187,6 +190,11 @@ class Book:
                     "name one that is not below it"
                 )
             way.append(above)
+
+
+def _printable(text: str) -> str:
+    """A text that may hold a name as given, without marks that steer a terminal."""
+    return "".join(mark if mark.isprintable() else repr(mark)[1:-1] for mark in text)
 
 
 def _nominal(asked: str, said: str) -> float:

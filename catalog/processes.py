@@ -123,8 +123,9 @@ def retire(con: "DuckDBPyConnection", name: str, *, by: str) -> Process:
 
 def keep(con: "DuckDBPyConnection", study_id: int, resolved: Mapping[str, Mapping[str, Any]]) -> None:
     """Keep with a study what its processes stood for: {asked: {"zone": keys of zone and law, "looser": asked or None}}."""
-    book = resolver(con)
-    rows = []
+    if not resolved:
+        return
+    book, rows = resolver(con), []
     for asked, entry in resolved.items():
         name = asked.partition("@")[0]
         version = book.in_force[name].version if name in book.in_force else None

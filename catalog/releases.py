@@ -1,6 +1,5 @@
 """Releases of drawings: frozen rows, superseded by later issues, never edited; every look at one checks its hashes."""
 
-import hashlib
 import json
 import unicodedata
 from collections.abc import Mapping, Sequence
@@ -9,13 +8,14 @@ from datetime import datetime
 from difflib import get_close_matches
 from typing import TYPE_CHECKING, Any
 
+from catalog import release_files
 from catalog.errors import InputError, WorkError
+from catalog.release_files import sha256
 from catalog.rows import fetch_rows, insert_rows, plain
 
 if TYPE_CHECKING:
     from duckdb import DuckDBPyConnection
 
-MANIFEST = "manifest.sha256"
 _JSON = ("uncovered", "warnings", "facts")
 _RECORD = (
     "drawing", "issue", "part", "study_id", "revision_id", "geometry", "title", "reason", "by_whom", "created",
@@ -149,12 +149,22 @@ def refuse_taken(con: "DuckDBPyConnection", drawing: str, issue: str, *, part: s
             )
 
 
+def summary(release: Release) -> dict[str, Any]:
+    """What programs are told of a release, as plain JSON values."""
+    told = ("id", "drawing", "issue", "part", "study_id", "geometry", "title", "reason", "by", "superseded_by", "stale", "newest",
+            "uncovered", "warnings", "facts", "version", "record_hash", "n_rows")  # fmt: skip
+    names = {"id": "release", "study_id": "study", "n_rows": "features"}
+    said = {names.get(name, name): getattr(release, name) for name in told}
+    said |= {"released": f"{release.created.isoformat()}Z", "supersedes": release.supersedes_issue}
+    return said | {"current": release.superseded_by is None}
+
+
 def record_hash(record: Mapping[str, Any], rows: Sequence[Mapping[str, Any]]) -> str:
     """sha256 (hex) over a release (its keys as columns of kept.releases) and its rows (those of release_rows)."""
     content = {name: record.get(name) for name in _RECORD}
     content["created"] = record["created"].isoformat()
     ordered = sorted((dict(row) for row in rows), key=lambda row: row["place"])
-    return _sha256(_canonical({"release": content, "rows": ordered}))
+    return sha256(_canonical({"release": content, "rows": ordered}))
 
 
 def freeze(
@@ -177,11 +187,11 @@ def freeze(
             " release again, so that the note names it"
         )
     release_id = con.execute("SELECT coalesce(max(id), 0) + 1 FROM kept.releases").fetchone()[0]
-    hashes = {"record_hash": record_hash(record, rows), "files_hash": _sha256(files[MANIFEST])}
+    hashes = {"record_hash": record_hash(record, rows), "files_hash": sha256(files[release_files.MANIFEST])}
     keys = {"id": release_id, "drawing_key": key(record["drawing"]), "issue_key": key(record["issue"])}
     insert_rows(con, "releases", [{**record, **keys, **hashes}])
     insert_rows(con, "release_rows", [{**row, "release_id": release_id} for row in rows])
-    _keep_files(con, release_id, files)
+    release_files.keep(con, release_id, files)
     made = find(con, record["drawing"], record["issue"])
     load_files(con, made)
     return made
@@ -203,16 +213,8 @@ def load_rows(con: "DuckDBPyConnection", release: Release) -> list[dict[str, Any
 def load_files(con: "DuckDBPyConnection", release: Release) -> dict[str, bytes]:
     """The files of a release by path, as they were handed out. Raises ReleaseAltered where one is not."""
     load_rows(con, release)
-    query = """
-        SELECT f.path, f.sha256, c.content FROM kept.release_files f
-        LEFT JOIN kept.release_contents c ON c.sha256 = f.sha256 WHERE f.release_id = ? ORDER BY f.path
-    """
-    found = con.execute(query, [release.id]).fetchall()
-    files = {path: content for path, _, content in found if content is not None}
-    listed = manifest_of({path: content for path, content in files.items() if path != MANIFEST})
-    sound = all(path in files and _sha256(files[path]) == digest for path, digest, _ in found)
-    kept = files.get(MANIFEST, b"")
-    if not sound or kept != listed or _sha256(kept) != release.files_hash:
+    files = release_files.load(con, release.id, files_hash=release.files_hash)
+    if files is None:
         raise ReleaseAltered(
             f"{release.label}: its files are not those that were released; restore a copy of the catalog"
         )
@@ -226,23 +228,6 @@ def altered(con: "DuckDBPyConnection", release: Release) -> bool:
     except ReleaseAltered:
         return True
     return False
-
-
-def manifest_of(files: Mapping[str, bytes]) -> bytes:
-    """A line a file as `sha256sum --check` takes it, by path."""
-    return "".join(f"{_sha256(content)}  {path}\n" for path, content in sorted(files.items())).encode()
-
-
-def study_files(con: "DuckDBPyConnection", study_id: int, *, version: str, under: str) -> dict[str, bytes]:
-    """Files of an earlier release of the same study by the same version of the program, those under a folder."""
-    query = """
-        SELECT f.path, f.sha256, c.content FROM kept.release_files f
-        JOIN kept.release_contents c ON c.sha256 = f.sha256
-        WHERE starts_with(f.path, ?) AND f.release_id =
-            (SELECT max(id) FROM kept.releases WHERE study_id = ? AND version = ?)
-    """
-    found = con.execute(query, [under, study_id, version]).fetchall()
-    return {path: content for path, digest, content in found} if _all_sound(found) else {}
 
 
 def moved_points(con: "DuckDBPyConnection", release: Release) -> dict[str, float]:
@@ -262,20 +247,6 @@ def _releases(con: "DuckDBPyConnection", rest: str, parameters: list) -> list[Re
     return [Release(**{**row, **{name: json.loads(row[name]) for name in _JSON}}) for row in found]
 
 
-def _keep_files(con: "DuckDBPyConnection", release_id: int, files: Mapping[str, bytes]) -> None:
-    rows = [(path, _sha256(content), content) for path, content in sorted(files.items())]
-    kept = {digest for (digest,) in con.execute("SELECT sha256 FROM kept.release_contents").fetchall()}
-    fresh = {digest: content for _, digest, content in rows if digest not in kept}
-    for digest, content in fresh.items():
-        con.execute("INSERT INTO kept.release_contents VALUES (?, ?)", [digest, content])
-    for path, digest, content in rows:
-        con.execute("INSERT INTO kept.release_files VALUES (?, ?, ?, ?)", [release_id, path, digest, len(content)])
-
-
-def _all_sound(found: Sequence[tuple[str, str, bytes]]) -> bool:
-    return all(_sha256(content) == digest for _, digest, content in found)
-
-
 def _near(con: "DuckDBPyConnection", drawing: str) -> str:
     names = [name for (name,) in con.execute("SELECT DISTINCT drawing FROM kept.releases ORDER BY 1").fetchall()]
     close = get_close_matches(drawing, names, n=3, cutoff=0.5)
@@ -287,7 +258,3 @@ def _near(con: "DuckDBPyConnection", drawing: str) -> str:
 def _canonical(value: Any) -> bytes:
     text = json.dumps(plain(value), sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
     return text.encode("utf-8", "surrogatepass")
-
-
-def _sha256(content: bytes) -> str:
-    return hashlib.sha256(content).hexdigest()

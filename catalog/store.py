@@ -84,6 +84,8 @@ class Catalog:
         """A read-only connection; locked_down: no files, no network, no settings (for free SQL)."""
         with self._turn(), self._opened(read_only=True) as con:
             if locked_down:
+                con.execute("SET enable_progress_bar = false")  # it would stand among the answer
+                con.execute("SET temp_directory = ''")
                 con.execute("SET enable_external_access = false")
                 con.execute("SET lock_configuration = true")
             yield con

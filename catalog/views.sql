@@ -143,6 +143,7 @@ COMMENT ON COLUMN spreads."limit_high" IS 'upper limit, unit of the measure';
 COMMENT ON COLUMN spreads."good_share" IS 'share of all builds inside the limits, 0 to 1';
 COMMENT ON COLUMN spreads."good_low" IS 'lower 95 % bound of good_share';
 COMMENT ON COLUMN spreads."good_high" IS 'upper 95 % bound of good_share';
+COMMENT ON COLUMN spreads."lost_share" IS 'share of builds lost to this measure, 0 to 1';
 COMMENT ON COLUMN spreads."builds" IS 'builds run';
 COMMENT ON COLUMN spreads."unassembled" IS 'builds without value';
 COMMENT ON COLUMN spreads."rss" IS 'root-sum-square stack, +-, unit of the measure';

@@ -8,7 +8,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from study.measures import KEYS
+from study.nominal import sweep
 from study.response import Response
+from study.stations import PositionError
 from study.verdicts import is_good
 
 BUILDS = 4096
@@ -89,3 +92,31 @@ def _ratios(other, first, picks):
         again = np.nanstd(a[picks], axis=1) / np.nanstd(b[picks], axis=1)
         out[i] = np.nanstd(a) / np.nanstd(b), *np.quantile(again, (0.025, 0.975))
     return out
+
+
+CURVES = {"bump": (("toe_deg", "camber_deg", "roll_centre_height_mm"), 30.0), "roll": (("camber_deg",), 2.0), "rack": (("camber_deg",), 20.0)}
+CURVE_POSITIONS = 13
+
+
+def curves_of(records: dict) -> list[dict]:
+    """Nominal curves of every geometry (label → record) as rows of a curves table, its label in the place of the side.
+
+    An input that one of them cannot reach is left out.
+    """
+    rows = []
+    for axis, (keys, travel) in CURVES.items():
+        at = np.linspace(-travel, travel, CURVE_POSITIONS)
+        spots = [tuple(float(x) if name == axis else 0.0 for name in ("bump", "roll", "rack")) for x in at]
+        try:
+            found = {label: sweep(record, spots, keys) for label, record in records.items()}
+        except PositionError:
+            continue
+        for label, values in found.items():
+            for key in keys:
+                side = "axle" if KEYS[key].scope == "axle" else "left"
+                rows += [
+                    {"stage": "nominal", "axis": axis, "x": float(x), "key": key, "unit": KEYS[key].unit, "side": label,
+                     "nominal": value[side][key], "q05": None, "q25": None, "q50": None, "q75": None, "q95": None}
+                    for x, value in zip(at, values, strict=True)
+                ]  # fmt: skip
+    return rows

@@ -57,6 +57,8 @@ def _strength(key, row):
     name = name[:1].lower() + name[1:] if row["measure"][:1].islower() else name
     if key == "mu_star":
         return f"mean effect {quantity(row[key], row['unit'], 2)} on {name}".replace("\u00a0", " ")
+    if row[key] < 0.005:
+        return "below 1 % of every measure" + (" that has limits" if row["limited"] else "")
     low, high = row["st_low"], row["st_high"]
     interval = f" ({100 * max(low, 0):.0f} to {100 * high:.0f} %)" if key == "st" and low is not None else ""
     linear = row["linear_share"]
@@ -88,6 +90,9 @@ def facts(dossier) -> dict:
     from study.handout import alignment
 
     found = {key: dossier.study.get(key) for key in FACTS}
+    judged = dossier.tables.get("verdicts") or [{"as_drawn": None}]
+    if found["good_share"] is None:  # a screening has no share of its own, but its verdicts were built as drawn too
+        found["good_share"] = judged[0]["as_drawn"]
     found |= {"stage": dossier.stages[-1], "wanted_share": dossier.asked.wanted_share, "cars": dossier.asked.cars}
     measured = dossier.of_stage("stats", dossier.stages[-1])
     found["measures"] = [{key: row.get(key) for key in MEASURED} for row in measured]
@@ -96,15 +101,14 @@ def facts(dossier) -> dict:
     return found | {"whole_axle": dossier.geometry.linkage == "solid-axle"}
 
 
-def warnings(dossier, *, newest: str, rows: Sequence[Mapping]) -> list[str]:
-    """What a reader of the note has to be warned of. newest: NAME@REVISION of the studied geometry now."""
-    return [*_of_study(dossier), *_of_rows(dossier, newest, rows)]
+def warnings(dossier, said: Mapping, *, newest: str, rows: Sequence[Mapping]) -> list[str]:
+    """What a reader of the note has to be warned of. said: the `facts`; newest: NAME@REVISION of the geometry now."""
+    return [*_of_study(dossier.asked, said), *_of_rows(dossier, newest, rows)]
 
 
-def _of_study(dossier):
-    facts, asked = dossier.study, dossier.asked
+def _of_study(asked, facts):
     limited = any(measure.limits for measure in asked.measures)
-    wanted, share = asked.wanted_share, facts.get("good_share")
+    wanted, share = asked.wanted_share, facts["good_share"]
     if not limited:
         yield "The study has no limits: it ranks features and gives no verdict; nothing says that these tolerances are close enough."
     elif share is None:

@@ -29,7 +29,7 @@ _LEGEND = {
 def note(record: Mapping, rows: Sequence[Mapping]) -> str:
     """The note as text, ending with a line break. record, rows: as in `study.release_rows.draft`."""
     blocks = [
-        _head(record), _tolerances(rows), _uncovered(record), _numbered("WARNINGS", record["warnings"]),
+        _head(record), _tolerances(rows), _uncovered(record), _wrapped(may_be_opened(record, rows)), _numbered("WARNINGS", record["warnings"]),
         _numbered("NOTES", notes(record, rows)), _decisions(rows), _foot(record),
     ]  # fmt: skip
     return "\n\n".join("\n".join(block) for block in blocks if block) + "\n"
@@ -55,8 +55,25 @@ def studied(record: Mapping) -> str:
     facts = record["facts"]
     text = f"Study {record['study_id']} “{record['title']}” of {record['geometry']}: {facts['method']}, {facts['builds']} builds, seed {facts['seed']}, {facts['stage']} alignment"  # fmt: skip
     if facts["good_share"] is not None:
-        text += f"; {_percent(facts['good_share'])} of builds inside all limits (95 %: {_percent(facts['good_low'])} to {_percent(facts['good_high'])}), {100 * facts['wanted_share']:g} % wanted"  # fmt: skip
+        text += f"; {good_builds(facts)} of builds inside all limits, {100 * facts['wanted_share']:g} % wanted"
     return text
+
+
+def good_builds(facts: Mapping) -> str:
+    """The share of good builds with its interval, where the method gives one."""
+    text = f"{100 * facts['good_share']:.1f} %"
+    return text if facts["good_low"] is None else text + f" ({100 * facts['good_low']:.1f} to {100 * facts['good_high']:.1f} %)"
+
+
+def may_be_opened(record: Mapping, rows: Sequence[Mapping]) -> str:
+    """What the study would still let open among these features, or ""."""
+    facts = record["facts"]
+    names = [row["name"] for row in rows if row["feature"] in (facts["open_together"] or ())]
+    if not names:
+        return ""
+    share = facts["open_together_good_share"]
+    tail = "" if share is None else f" ({100 * share:.1f} % of builds good, all of the study's opened together)"
+    return f"The study would let these open further: {', '.join(names)}{tail}."
 
 
 def frame_of_reference(record: Mapping) -> str:
@@ -160,10 +177,6 @@ def _wrapped(text, *, first="", then=""):
 
 def _pure_letters(text):
     return " | ".join(datum_letters(text)) == " | ".join(part.strip() for part in text.replace(",", "|").split("|"))
-
-
-def _percent(value):
-    return f"{100 * value:.1f} %"
 
 
 def _mm(value):

@@ -81,14 +81,14 @@ def checked_part(dossier, part: str | None) -> str:
 def draft(dossier, head: Head, said: Said) -> tuple[dict, list[dict]]:
     """(the release, its rows) as columns of the catalog's tables. Raises ReleasePartError, ReleaseTextError."""
     checked_part(dossier, head.part)
-    rows = _rows(dossier, head.part, said)
+    rows, told = _rows(dossier, head.part, said), facts(dossier)
     uncovered = [name for name in dossier.model.perfect if part_of(name) == head.part]
     record = {
         "drawing": head.drawing, "issue": head.issue, "part": head.part, "study_id": dossier.study["id"],
         "revision_id": head.revision_id, "geometry": dossier.study["geometry"], "title": dossier.study["title"],
         "reason": said_of_all("--reason", said.reason), "by_whom": head.by, "created": head.created, "supersedes": head.supersedes,
-        "supersedes_hash": head.supersedes_hash, "uncovered": uncovered, "warnings": warnings(dossier, newest=head.newest, rows=rows),
-        "facts": facts(dossier) | {"supersedes_issue": head.supersedes_issue}, "result_hash": head.result_hash, "version": head.version,
+        "supersedes_hash": head.supersedes_hash, "uncovered": uncovered, "warnings": warnings(dossier, told, newest=head.newest, rows=rows),
+        "facts": told | {"supersedes_issue": head.supersedes_issue}, "result_hash": head.result_hash, "version": head.version,
     }  # fmt: skip
     return clean_all(record), clean_all(rows)
 
@@ -206,8 +206,7 @@ def _remarks(dossier, source):
 def _of_part(dossier, source):
     part, _, feature = source.name.partition(".")
     if feature.startswith("hub_axis"):
-        wheel = getattr(dossier.geometry, "right" if feature.endswith("_right") else "left").wheel
-        yield f"true direction: camber {wheel.camber_deg:g}°, toe {wheel.toe_deg:g}°"
+        yield "true direction: " + _wheel_angles(dossier.geometry, feature.removeprefix("hub_axis").strip("_"))
     if feature == "strut_axis":
         yield "true direction: from strut lower to strut top"
     if part in dossier.geometry.arms and source.kind == "point":
@@ -215,3 +214,14 @@ def _of_part(dossier, source):
     for adjuster in dossier.asked.alignment or ():
         if source.kind == "length" and (adjuster.by or "").removesuffix("_split") == part:
             yield f"re-set on the car for {adjuster.target.replace('_', ' ')}"
+
+
+def _wheel_angles(geometry, side):
+    """Camber and toe of a side, or of both where none is named and they differ."""
+    angles = {
+        hand: f"camber {getattr(geometry, hand).wheel.camber_deg:g}°, toe {getattr(geometry, hand).wheel.toe_deg:g}°"
+        for hand in ("left", "right")
+    }
+    if side or angles["left"] == angles["right"]:
+        return angles[side or "left"]
+    return f"left {angles['left']}; right {angles['right']}"

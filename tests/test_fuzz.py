@@ -18,7 +18,7 @@ from threadpoolctl import threadpool_limits
 
 from catalog.errors import HoldtightError
 from catalog.geometry import from_record, to_record
-from catalog.geometry_file import parse_geometry, read_geometry
+from catalog.geometry_file import GeometryFileError, parse_geometry, read_geometry
 from study.nominal import evaluate
 from study.study_file import parse_study
 from study.tasks import StudyWork
@@ -218,6 +218,8 @@ def outcome(run, given, label):
     except HoldtightError as error:
         lines = str(error).splitlines()
         assert 1 <= len(lines) <= 5 and len(str(error)) < 5000, f"{label}: {error}\n{given!r}"
+        shows = not isinstance(error, GeometryFileError) or all(line.isprintable() for line in lines)
+        assert shows, f"{label}: marks that steer a terminal in {str(error)!r}\n{given!r}"
         found = type(error).__name__
     except Exception as error:
         raise AssertionError(f"{label}: {type(error).__name__}: {error}\n{given!r}") from error

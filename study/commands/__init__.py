@@ -9,7 +9,7 @@ from catalog.errors import HoldtightError
 
 COMMANDS = (
     "run", "evaluate", "sweep", "measures", "add", "geometries", "show", "queue", "work", "studies", "cancel",
-    "critical", "sheet", "schema", "processes", "sql", "export", "as-built",
+    "critical", "compare", "allocate", "sheet", "release", "releases", "schema", "processes", "sql", "export", "as-built",
 )  # fmt: skip
 
 app = typer.Typer(

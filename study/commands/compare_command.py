@@ -23,6 +23,10 @@ def run(
     """Put geometries side by side: measures at design, curves, and with a study which one forgives more."""
     if len(geometries) < 2:
         raise CompareError("compare: name two geometries or more")
+    if chart is not None:
+        from study.chart_file import ending_of
+
+        ending_of(chart)
     records = {}
     for name in geometries:
         record, label = geometry_named(name, catalog)
@@ -125,8 +129,13 @@ def _interval(ratio):
 
 
 def _draw(records, path):
-    from study.charts import export
+    """Bump, roll and rack curves of all of them in one file."""
+    from study.chart_file import write_chart
+    from study.charts import panels
     from study.charts.overlay import overlay_spec
-    from study.overlay_curves import curves_of
+    from study.compare import curves_of
 
-    return export(overlay_spec(curves_of(records)), path.parent, path.stem)
+    rows = curves_of(records)
+    kinds = dict.fromkeys((row["axis"], row["key"]) for row in rows)
+    specs = [overlay_spec(rows, axis, key) for axis, key in kinds]
+    return [write_chart(panels(specs, title=f"Compared: {', '.join(records)}"), path)]

@@ -54,7 +54,7 @@ def run(
 
 def _check_together(name, add, retire, everything, given):
     doing = [f"--{word}" for word, value in (("add", add), ("retire", retire), ("all", everything or None)) if value is not None]
-    doing += [name] if name is not None else []
+    doing += [clean(name)] if name is not None else []
     if len(doing) > 1:
         raise ProcessOptionError(f"processes: {' and '.join(doing)} do not go together; do one at a time")
     if add is None and given:
@@ -62,7 +62,7 @@ def _check_together(name, add, retire, everything, given):
     if add is not None:
         for key in ("zone", "source"):
             if key not in given:
-                raise ProcessOptionError(f"processes --add {add}: --{key} is missing; {_WANTED[key]}")
+                raise ProcessOptionError(f"processes --add {clean(add)}: --{key} is missing; {_WANTED[key]}")
 
 
 _WANTED = {
@@ -80,7 +80,7 @@ def _add(catalog, name, given, by, as_json):
     try:
         parse_zone({**zone, **{key: given[key] for key in ("distribution", "cp", "truncated") if key in given}})
     except ZoneError as error:
-        raise ProcessOptionError(f"processes --add {name}: {error}") from None
+        raise ProcessOptionError(f"processes --add {clean(name)}: {error}") from None
     with Catalog(catalog).write() as con:
         made = processes.add(con, name=name, zone=zone, by=by, **given)
         book = processes.resolver(con)
@@ -141,7 +141,7 @@ def _show(catalog, name, everything, as_json):
     found, book, kept = _read(catalog)
     if name is None:
         shown = found if everything else [each for each in found if each.retired is None]
-        _print_list(shown, book, kept, as_json)
+        _print_list(shown, book, kept, everything, as_json)
         return
     process, nominal = book.find(name) if "@" in name else (book.get(name), None)
     if as_json:
@@ -165,26 +165,22 @@ def _plain(process, book):
     return {"process": process.name, "version": process.version, **zones, **own, "tighter": below, **times}
 
 
-def _print_list(shown, book, kept, as_json):
+def _print_list(shown, book, kept, everything, as_json):
     if as_json:
         print_json([_plain(each, book) for each in shown])
         return
-    columns = [("process", "left"), ("zone", "left"), ("jig once", "right"), ("a piece", "right"), ("next looser", "left")]
-    columns += [("source", "left")]
-    rows = [
-        [_label(p), _zone_text(p), f"{p.jig_cost:g}", f"{p.piece_cost:g}", p.looser or "–", p.source.partition(":")[0]]
-        for p in shown
-    ]
+    columns = [("process", "left")] + ([("version", "right"), ("retired", "right")] if everything else [])
+    columns += [("zone", "left"), ("jig once", "right"), ("a piece", "right"), ("next looser", "left"), ("source", "left")]
+    rows = []
+    for p in shown:
+        state = [str(p.version), f"{p.retired:%Y-%m-%d}" if p.retired else ""] if everything else []
+        cost = [f"{p.jig_cost:g}", f"{p.piece_cost:g}"]
+        rows.append([p.name, *state, _zone_text(p), *cost, p.looser or "–", p.source.partition(":")[0]])
     print_table("processes", columns, rows)
     print("Studies write NAME, or NAME@NOMINAL (mm) where the zone goes by nominal dimension.")
     print("`holdtight processes NAME` shows the ranges, the remark and the source in full.")
     if not kept:
         print("There is no catalog yet: these are the ones that it will start with.")
-
-
-def _label(process):
-    name = process.name if process.version == 1 else f"{process.name} (version {process.version})"
-    return name if process.retired is None else f"{name}, retired {process.retired:%Y-%m-%d}"
 
 
 def _zone_text(process):

@@ -6,13 +6,17 @@ from typing import Annotated
 
 import typer
 
-from catalog.errors import InputError
+from catalog.errors import InputError, WorkError
 from study.commands.common import WIDTH_UNSEEN, CatalogOption, JsonOption, clean, print_json, print_table
 from study.commands.tabular import json_value, unique, write_csv
 
 
 class SqlError(InputError):
     """A query that the catalog refuses or that asks for more than reading."""
+
+
+class Stopped(WorkError):
+    """The user ended a query."""
 
 
 READING = ("SELECT", "EXPLAIN")
@@ -86,24 +90,25 @@ def _fetched(con, query, most):
 
 def interruptible(con, ask):
     """What `ask` gives, run on a thread of its own, so that a keyboard interrupt reaches the query at once."""
-    outcome = []
+    outcome, done = [], threading.Event()
 
     def work():
         try:
             outcome.append((ask(), None))
         except BaseException as problem:
             outcome.append((None, problem))
+        finally:
+            done.set()
 
-    thread = threading.Thread(target=work, name="query", daemon=True)
-    thread.start()
+    threading.Thread(target=work, name="query", daemon=True).start()
     try:
-        while thread.is_alive():
-            thread.join(0.05)
+        while not done.wait(0.05):  # not Thread.join: an interrupt inside it makes a thread look ended
+            pass
     except KeyboardInterrupt:
-        while thread.is_alive():  # an interrupt that comes between two steps of the query is lost: again
+        while not done.is_set():  # an interrupt that comes between two steps of the query is lost: again
             con.interrupt()
-            thread.join(0.05)
-        raise
+            done.wait(0.05)
+        raise Stopped("sql: the query was stopped") from None
     found, problem = outcome[0]
     if problem is not None:
         raise problem

@@ -11,43 +11,41 @@ DEFAULT_KEYS = "camber_deg,toe_deg,half_track_mm,roll_centre_height_mm"
 ENDS = {"bump": 30.0, "roll": 2.0, "rack": 20.0}
 
 
+Name = Annotated[
+    str | None, typer.Argument(help="A geometry file, or NAME or NAME@REV of the catalog; not needed with --study.")
+]
+From = Annotated[
+    float | None, typer.Option("--from", help="First position, mm or degrees; else -30 mm, -2 degrees, -20 mm.")
+]
+To = Annotated[float | None, typer.Option("--to", help="Last position, mm or degrees; else 30 mm, 2 degrees, 20 mm.")]
+Against = Annotated[str | None, typer.Option(help="A second input that moves too: gives a map over both.")]
+AgainstFrom = Annotated[float | None, typer.Option("--against-from", help="First position of the second input.")]
+AgainstTo = Annotated[float | None, typer.Option("--against-to", help="Last position of the second input.")]
+AgainstPositions = Annotated[int, typer.Option(help="Number of positions of the second input.")]
+OneSide = Annotated[
+    str | None, typer.Option(help="left or right, for measures of one wheel; else left, in a chart of curves both.")
+]
+StudyNumber = Annotated[int | None, typer.Option(help="A finished study: adds the band of its builds.")]
+Chart = Annotated[Path | None, typer.Option(help="Write a chart: .svg, .png, .pdf, .html or .json (Vega-Lite).")]
+
+
 def run(
-    geometry: Annotated[
-        str | None,
-        typer.Argument(help="A geometry file, or NAME or NAME@REV of the catalog; not needed with --study."),
-    ] = None,
+    geometry: Name = None,
     over: Annotated[str, typer.Option(help="What moves: bump, roll or rack.")] = "bump",
-    start: Annotated[
-        float | None, typer.Option("--from", help="First position, mm or degrees; else -30 mm, -2 degrees, -20 mm.")
-    ] = None,
-    stop: Annotated[
-        float | None, typer.Option("--to", help="Last position, mm or degrees; else 30 mm, 2 degrees, 20 mm.")
-    ] = None,
+    start: From = None,
+    stop: To = None,
     positions: Annotated[int, typer.Option(help="Number of positions.")] = 13,
-    against: Annotated[
-        str | None, typer.Option(help="A second input that moves: gives a map over both.", show_default=False)
-    ] = None,
-    against_start: Annotated[
-        float | None, typer.Option("--against-from", help="First position of the second input, mm or degrees.")
-    ] = None,
-    against_stop: Annotated[
-        float | None, typer.Option("--against-to", help="Last position of the second input, mm or degrees.")
-    ] = None,
-    against_positions: Annotated[int, typer.Option(help="Number of positions of the second input.")] = 9,
+    against: Against = None,
+    against_start: AgainstFrom = None,
+    against_stop: AgainstTo = None,
+    against_positions: AgainstPositions = 9,
     measures: Annotated[str, typer.Option(help="Measures, separated by commas.")] = DEFAULT_KEYS,
-    side: Annotated[
-        str | None,
-        typer.Option(help="left or right, for measures of one wheel; else left, in a chart both.", show_default=False),
-    ] = None,
+    side: OneSide = None,
     bump: Annotated[float, typer.Option(help="Bump held during the sweep, mm.")] = 0.0,
     roll: Annotated[float, typer.Option(help="Roll held during the sweep, degrees.")] = 0.0,
     rack: Annotated[float, typer.Option(help="Rack travel held during the sweep, mm.")] = 0.0,
-    study: Annotated[
-        int | None, typer.Option(help="A finished study: adds the band of its builds.", show_default=False)
-    ] = None,
-    chart: Annotated[
-        Path | None, typer.Option(help="Write a chart: .svg, .png, .pdf, .html or .json (Vega-Lite).")
-    ] = None,
+    study: StudyNumber = None,
+    chart: Chart = None,
     as_json: JsonOption = False,
     catalog: CatalogOption = None,
 ) -> None:

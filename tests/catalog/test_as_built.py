@@ -1,5 +1,7 @@
 """Measured points: how a file is read, what is refused, and that a measurement stays as it was."""
 
+from pathlib import Path
+
 import pytest
 from catalog_samples import ALL, MEASURES, SOLID_AXLE, geometry
 
@@ -188,10 +190,10 @@ def test_the_view_gives_deviations_and_positions(kept):
     with catalog.write() as con:
         as_built.add(con, revision, measured(PLAIN), car="No. 3", by="bob")
         query = "SELECT side, point, dx_mm, dy_mm, dz_mm, position_mm FROM as_built_points WHERE car = 'No. 3'"
-        rows = con.execute(query).fetchall()
-    for row, point in zip(rows, measured(PLAIN).points, strict=True):
-        assert row[:2] == (point.side, point.point)
-        assert row[2:] == pytest.approx((*point.offset, point.position_mm), abs=1e-9)
+        rows = {row[:2]: row[2:] for row in con.execute(query).fetchall()}
+    assert len(rows) == 3
+    for point in measured(PLAIN).points:
+        assert rows[point.side, point.point] == pytest.approx((*point.offset, point.position_mm), abs=1e-9)
 
 
 @pytest.mark.parametrize(
@@ -203,3 +205,13 @@ def test_names_and_notes_have_bounds(kept, change, word):
         as_built.add(con, revision, measured(PLAIN), **{"car": "a", "by": "b"} | change)
     with catalog.read() as con, pytest.raises(AsBuiltError, match="measurement 1 is not in the catalog"):
         as_built.get(con, 1)
+
+
+def test_a_saved_catalog_still_gives_its_measurement(tmp_path):
+    path = tmp_path / "v0005.duckdb"
+    path.write_bytes((Path(__file__).parents[1] / "old_catalogs" / path.name).read_bytes())
+    with Catalog(path).read() as con:
+        [found] = as_built.list_as_built(con)
+    assert (found.geometry, found.car, [p.offset for p in found.points]) == (
+        "example-front@1", "No. 1", [(0.5, 0.0, 0.0), (0.0, -0.5, 0.0)],
+    )  # fmt: skip

@@ -253,3 +253,17 @@ def test_a_text_without_a_folder_takes_no_points_file():
 def test_unused_rows_may_hold_anything(tmp_path):
     csv = "Export of 3 points\n" + GOOD + "seat,n/a,,\nnote\n,1,2,3\nseat,4,5,6\n"
     assert read(tmp_path, TEXT, csv).ignored_points == ("Export of 3 points", "seat", "note", "(line 13)")
+
+
+def test_names_out_of_a_file_cannot_steer_a_terminal_or_fill_it():
+    with pytest.raises(GeometryFileError) as found:
+        geometry(WISHBONES + '"a\\nb\\u001b[2J" = 1\n' + '"' + "x" * 50_000 + '" = 1\n')
+    lines = str(found.value).splitlines()
+    assert len(lines) == 2 and all(line.isprintable() and len(line) <= 1000 for line in lines)
+
+
+def test_a_hostile_table_is_refused_in_little_time(tmp_path):
+    pairs = "".join(f"x{i}_inner;1;2;3\nx{i}_outer;4;5;{i}\n" for i in range(15_000))
+    assert "has 15000 links" in refusal(tmp_path, split_sample(FIVE_LINK)[0], pairs)
+    assert "line 1, " in refusal(tmp_path, TEXT, "," * 500_000)
+    assert "10000 letters" in refusal(tmp_path, TEXT, GOOD + "9" * 200_000)

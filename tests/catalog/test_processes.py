@@ -321,6 +321,14 @@ def test_an_older_catalog_gets_the_initial_processes_once(tmp_path, old):
             assert con.execute("SELECT max(id) FROM kept.processes").fetchone() == (len(initial_processes()),)
 
 
+def test_a_saved_catalog_still_gives_what_a_study_kept(tmp_path):
+    path = tmp_path / "v0005.duckdb"
+    path.write_bytes((ROOT / "tests" / "old_catalogs" / path.name).read_bytes())
+    with Catalog(path).read() as con:
+        kept = processes.of_study(con, 1)
+    assert kept("cnc-upright") == {"diameter": 0.1} and kept.looser("cnc-upright") is None
+
+
 def test_a_book_of_nothing_knows_nothing():
     with pytest.raises(ProcessNotFound, match="not in the catalog"):
         Book([])("x")

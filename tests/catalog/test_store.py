@@ -352,5 +352,9 @@ def test_catalogs_of_every_schema_version_still_give_their_answers(tmp_path, old
         assert job.id == 2 and finish(con, 2, "here:1:x", tables=result_tables())
 
 
+NEVER_ALONE = {2, 3, 4}  # came with version 5 in one step
+
+
 def test_there_is_an_old_catalog_for_every_schema_version():
-    assert [int(path.stem[1:]) for path in OLD] == [step.number for step in migrate.migrations()]
+    wanted = [step.number for step in migrate.migrations() if step.number not in NEVER_ALONE]
+    assert [int(path.stem[1:]) for path in OLD] == wanted

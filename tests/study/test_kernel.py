@@ -120,7 +120,7 @@ def test_a_build_on_the_other_branch_is_reported():
 
 
 def test_a_position_out_of_reach_says_how_far_the_rows_stay_open():
-    with pytest.raises(PositionError, match=r"bump 900 mm.*does not reach.*mm\)|gone over a dead point|singular"):
+    with pytest.raises(PositionError, match=r"bump 900 mm.*does not reach this position \((rows left open by .* mm|it would go over a dead point)\)"):
         response(wishbone(), measures='[[measures]]\nof = "toe_deg"\nat = { bump = 900 }\n')
 
 

@@ -5,7 +5,8 @@ import shutil
 
 import pytest
 
-from study import sheet
+from study import charts, sheet
+from study.chart_file import Numbers, write_chart
 from tests.study import sample_study, sample_tables
 
 CHROMIUM, DRIVER = (shutil.which(name) for name in ("chromium", "chromedriver"))
@@ -111,3 +112,14 @@ def test_charts_carry_their_description_when_drawn(browser, page):
         "return [...document.querySelectorAll('.chart')].map(box => box.getAttribute('aria-label') || '')"
     )
     assert labels and all(len(label) > 20 for label in labels)
+
+
+def test_a_page_of_one_chart_is_drawn(browser, tmp_path):
+    at = {"over": "bump", "against": "rack", "over_at": (-10.0, 10.0), "against_at": (0.0, 5.0)}
+    maps = [charts.map_spec([[1.0, low], [2.0, 3.0]], **at, key="toe_deg", unit="deg") for low in (0.5, -0.5)]
+    path = write_chart(charts.panels(maps, title="Two maps"), tmp_path / "maps.html", [Numbers("toe", ["a"], [["1"]])])
+    opened(browser, path.as_uri(), 500)
+    assert browser.execute_script("return document.querySelectorAll('.chart svg').length") == 1
+    assert browser.execute_script(
+        "return document.documentElement.scrollWidth - document.documentElement.clientWidth") <= 0  # fmt: skip
+    assert problems(browser) == []

@@ -116,7 +116,7 @@ def test_map_as_json_and_table(holdtight, tmp_path):
     assert found["positions"] == {"bump_mm": [-30.0, 30.0], "rack_mm": [0.0, 5.0, 10.0]} and found["held"] == {"roll_deg": 1.0}
     assert [len(row) for row in found["measures"][0]["values"]] == [3, 3]
     _, out, _ = holdtight(*words)
-    assert "bump_steer_deg_per_mm [deg/mm], left side, roll 1° held" in out
+    assert "bump_steer_deg_per_mm [deg/mm], left side, roll 1° held" in " ".join(out.split())
 
 
 # --- chart files
