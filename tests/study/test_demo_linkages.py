@@ -108,7 +108,8 @@ def test_the_alignment_reaches_its_goals_within_the_adjusters_travel(name):
     study = work.study
     wanted = {a.target: a for a in study.alignment if a.by}
     assert all(row["ran_out_share"] == 0.0 for row in rows["demand"])
-    assert {row["adjuster"].split()[0] for row in rows["demand"]} == set(wanted)
+    if study.method != "morris":  # whose walks are no sample of builds
+        assert {row["adjuster"].split()[0] for row in rows["demand"]} == set(wanted)
     if not wanted:
         return
     text = re.sub(r"(?m)^ride_height = .*\n", "", study.text[: study.text.index("[[measures]]")])
