@@ -32,7 +32,7 @@ def main() -> None:
     try:
         app(standalone_mode=True)
     except HoldtightError as error:
-        print(f"holdtight: {error}", file=sys.stderr)
+        print(f"holdtight: {_inert(error)}", file=sys.stderr)
         sys.exit(error.exit_code)
     except KeyboardInterrupt:
         print("holdtight: stopped", file=sys.stderr)
@@ -46,6 +46,13 @@ def main() -> None:
     except Exception as error:  # a fault of the program itself: one line, and the traceback where one can be sent from
         print(f"holdtight: {_kept_traceback(error)}", file=sys.stderr)
         sys.exit(1)
+
+
+def _inert(error: Exception) -> str:
+    """An error's lines without control characters that something given by a user may hold."""
+    from study.commands.common import clean
+
+    return "\n".join(clean(line) for line in str(error).split("\n"))
 
 
 def _kept_traceback(error: Exception) -> str:
