@@ -1,5 +1,6 @@
 """What is wrong with a file's entries, said in a line each: file, key, value, rule, remedy."""
 
+import re
 import types
 import typing
 from collections.abc import Iterator
@@ -10,6 +11,7 @@ from pydantic import BaseModel, ValidationError
 from study.patterns import near
 
 _MOST = 3
+_MOST_LETTERS = 600
 _RULES = {
     "float_type": "must be a number",
     "int_type": "must be a whole number",
@@ -26,10 +28,16 @@ _RULES = {
 
 def explain(error: ValidationError, model: type[BaseModel], *, source: str) -> str:
     """Up to three lines for the errors of `model` in the file `source`."""
-    lines = list(dict.fromkeys(f"{source}: {_line(item, model)}" for item in error.errors()))
+    lines = list(dict.fromkeys(one_line(f"{source}: {_line(item, model)}") for item in error.errors()))
     if len(lines) > _MOST:
         lines[_MOST - 1 :] = [f"{source}: … and {len(lines) - _MOST + 1} more"]
     return "\n".join(lines)
+
+
+def one_line(text: str) -> str:
+    """A message as one line of bounded length, with nothing in it that could steer a terminal."""
+    inert = re.sub(r"[\x00-\x1f\x7f-\x9f\u2028\u2029]+", "�", text)
+    return inert if len(inert) <= _MOST_LETTERS else inert[: _MOST_LETTERS - 1] + "…"
 
 
 def key_text(path: tuple[str | int, ...]) -> str:

@@ -1,7 +1,6 @@
 """Which zone each feature of a geometry gets: names and wildcards of a study's [errors] table."""
 
 import difflib
-import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
@@ -54,8 +53,7 @@ def near(word: str, known: Iterable[str], *, count: int = 4) -> str:
 
 
 def _named_by(pattern: str, zone: Zone, features: Sequence[Feature]) -> frozenset[str]:
-    rule = re.compile(".*".join(re.escape(part) for part in pattern.split("*")))
-    matched = [feature for feature in features if rule.fullmatch(feature.name)]
+    matched = [feature for feature in features if _matches(pattern.split("*"), feature.name)]
     fitting = [feature for feature in matched if zones.fits(zone, feature.kind)]
     if not matched:
         hint = near(pattern.replace("*", ""), [feature.name for feature in features])
@@ -67,6 +65,23 @@ def _named_by(pattern: str, zone: Zone, features: Sequence[Feature]) -> frozense
             f"{_GIVES[first.kind]}; give {_TAKES[first.kind]} there"
         )
     return frozenset(feature.name for feature in fitting)
+
+
+def _matches(parts: list[str], name: str) -> bool:
+    """Whether the parts between the wildcards stand in the name in their order; each is looked for once."""
+    first, *middle = parts
+    if not middle:
+        return name == first
+    *middle, last = middle
+    if not (name.startswith(first) and name.endswith(last) and len(name) >= len(first) + len(last)):
+        return False
+    at, end = len(first), len(name) - len(last)
+    for part in middle:
+        at = name.find(part, at, end)
+        if at < 0:
+            return False
+        at += len(part)
+    return True
 
 
 def _winner(claims: Sequence[tuple[str, Zone]], feature: Feature) -> Zone:

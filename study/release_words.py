@@ -43,7 +43,7 @@ def number_text(option: str, given: str) -> str:
         rule = "is empty; give one"
     elif len(text) > MOST_NUMBER:
         rule = f"has {len(text)} characters; {MOST_NUMBER} at the most"
-    elif any(_steers(c) or (c.isspace() and c != " ") for c in text):
+    elif any(_steers(c) for c in text):
         rule = "has control characters or line breaks; leave them out"
     if rule:
         raise ReleaseTextError(f"{option} {clean(given)[:MOST_NUMBER]!r}: {rule}")

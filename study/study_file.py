@@ -1,6 +1,5 @@
 """A study file (TOML) to a frozen Study: what to build, how to align it, what to measure."""
 
-import tomllib
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -10,8 +9,9 @@ from typing import Any
 from pydantic import ValidationError
 
 from catalog.errors import InputError
+from catalog.toml_text import parse_toml, read_text
 from study import study_measures
-from study.entry_errors import explain
+from study.entry_errors import explain, one_line
 from study.named_processes import Looser, NamedProcesses, Processes
 from study.study_entries import JigEntry, LawEntry, StudyEntry, ZoneEntry
 from study.study_measures import Measure
@@ -81,11 +81,7 @@ class Study:
 
 def read_study(path: Path, *, processes: Processes | None = None, looser: Looser | None = None) -> Study:
     """Study of the file; processes and looser as in parse_study. Raises StudyFileError."""
-    try:
-        text = Path(path).read_text(encoding="utf-8")
-    except (OSError, UnicodeDecodeError) as error:
-        reason = getattr(error, "strerror", None) or "it is not UTF-8 text"
-        raise StudyFileError(f"{path}: cannot be read: {reason}; give the path of a study file") from None
+    text = read_text(Path(path), error=StudyFileError)
     return parse_study(text, source=str(path), processes=processes, looser=looser)
 
 
@@ -97,15 +93,13 @@ def parse_study(
     processes: name → keys of zone and law; looser: name → name of the next looser process, or None.
     """
     try:
-        entry = StudyEntry.model_validate(tomllib.loads(text))
-    except tomllib.TOMLDecodeError as error:
-        raise StudyFileError(f"{source}: is not valid TOML: {error}; correct that line") from None
+        entry = StudyEntry.model_validate(parse_toml(text.removeprefix("\ufeff"), source=source, error=StudyFileError))
     except ValidationError as error:
         raise StudyFileError(explain(error, StudyEntry, source=source)) from None
     try:
         return _study(entry, text, NamedProcesses(processes, looser))
     except InputError as error:
-        raise StudyFileError(f"{source}: {error}") from None
+        raise StudyFileError(one_line(f"{source}: {error}")) from None
 
 
 def json_schema() -> dict[str, Any]:

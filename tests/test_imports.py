@@ -14,6 +14,7 @@ OWN = ("catalog", "study")
 HEAVY = ("numpy", "scipy", "duckdb", "SALib", "altair", "pandas", "pydantic", "matplotlib", "vl_convert")
 READS_CATALOG = ("study.commands.*", "study.runner", "study.sheet*", "study.dossier")
 ERRORS = "catalog.errors"
+TOML_TEXT = "catalog.toml_text"  # reads hostile text safely; knows nothing of the catalog
 
 
 def module_name(path: Path) -> str:
@@ -105,7 +106,7 @@ def test_only_the_outer_ring_imports_the_catalog():
     for module, names in of("study").items():
         if any(fnmatch(module, pattern) for pattern in READS_CATALOG):
             continue
-        reached = {name for name in names if within(name, "catalog")} - {ERRORS}
+        reached = {name for name in names if within(name, "catalog")} - {ERRORS, TOML_TEXT}
         assert not reached, f"{module} imports {', '.join(sorted(reached))}"
 
 

@@ -1,16 +1,18 @@
 """Releases: frozen once, superseded by later issues, checked at every look, stale when the geometry went on."""
 
 import hashlib
+import shutil
 from datetime import datetime
 from pathlib import Path
 
 import pytest
+from catalog_samples import MEASURES, WISHBONES, geometry, with_study
 
 from catalog import releases
 from catalog.errors import InputError, WorkError
 from catalog.release_files import MANIFEST, manifest_of, of_study
 from catalog.revisions import register
-from tests.catalog.catalog_samples import MEASURES, WISHBONES, geometry, with_study
+from catalog.store import Catalog
 
 FILES = {"note.txt": b"note\n", "charts/one.svg": b"<svg/>"}
 
@@ -47,9 +49,14 @@ def freeze(catalog, *, rows=None, contents=None, **more):
         return releases.freeze(con, record(**{**chain, **more}), rows or [row()], contents or files())
 
 
+@pytest.fixture(scope="module")
+def fresh(tmp_path_factory):
+    return with_study(tmp_path_factory.mktemp("fresh") / "shop.duckdb")[0].path
+
+
 @pytest.fixture
-def catalog(tmp_path):
-    return with_study(tmp_path / "shop.duckdb")[0]
+def catalog(fresh, tmp_path):
+    return Catalog(shutil.copy(fresh, tmp_path))
 
 
 def looked_up(catalog, function, *words, **more):
