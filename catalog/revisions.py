@@ -57,15 +57,21 @@ def register(
 
     con: a writing connection; measures: {"left"|"right"|"axle": {key: value or None}} at design.
     """
-    same = _revisions(con, "WHERE g.name = ? AND r.content_hash = ?", [geometry.name, geometry.content_hash])
-    if same:
-        return same[0]
+    same = known(con, geometry)
+    if same is not None:
+        return same
     revision_id = con.execute("SELECT coalesce(max(id), 0) + 1 FROM kept.revisions").fetchone()[0]
     _insert_revision(con, geometry, revision_id=revision_id, by=by, why=why)
     insert_rows(con, "points", _point_rows(revision_id, geometry))
     insert_rows(con, "revision_measures", _measure_rows(revision_id, measures))
     made = _revisions(con, "WHERE r.id = ?", [revision_id])[0]
     return Revision(**{name: getattr(made, name) for name in Revision.__slots__} | {"is_new": True})
+
+
+def known(con: "DuckDBPyConnection", geometry: Geometry) -> Revision | None:
+    """The revision that holds this very content already, or None."""
+    same = _revisions(con, "WHERE g.name = ? AND r.content_hash = ?", [geometry.name, geometry.content_hash])
+    return same[0] if same else None
 
 
 def find(con: "DuckDBPyConnection", spec: str) -> Revision:

@@ -4,6 +4,7 @@ The catalog is held only for the moment of a claim, a chunk or a result. Every t
 its geometry, so a study that was interrupted goes on with the tasks that are not kept yet and ends with the same bits.
 """
 
+import contextlib
 import threading
 import time
 from collections.abc import Callable
@@ -51,6 +52,10 @@ def register(catalog: Catalog, geometry, *, by: str, why: str) -> revisions.Revi
     """Judge a geometry's mobility, evaluate it and keep it as a revision (the same content is the same revision)."""
     from study.nominal import evaluate
 
+    with contextlib.suppress(CatalogMissing), catalog.read() as con:
+        same = revisions.known(con, geometry)
+        if same is not None:
+            return same
     found = evaluate(geometry)
     with catalog.write() as con:
         return revisions.register(con, geometry, measures=found, by=by, why=why)
@@ -78,13 +83,18 @@ def geometry_of(catalog: Catalog, study: Study, folder: Path, *, by: str):
     return register(catalog, geometry, by=by, why="named by a study"), geometry
 
 
-def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
-    """Check a study against its geometry and queue it. Gives its number."""
-    revision, geometry = geometry_of(catalog, study, folder, by=by)
+def check(catalog: Catalog, study: Study, path: Path, *, by: str) -> None:
+    """Raise StudyDoesNotFit where the study of a file asks its geometry for what it does not have or cannot do."""
+    revision, geometry = geometry_of(catalog, study, path.parent, by=by)
     try:
         StudyWork(geometry, study)
     except InputError as error:
-        raise StudyDoesNotFit(f'study "{study.title}" on {revision.spec}: {error}') from None
+        raise StudyDoesNotFit(f"{path}: on {revision.spec}: {error}") from None
+
+
+def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
+    """Queue a study that was checked. Gives its number."""
+    revision, _ = geometry_of(catalog, study, folder, by=by)
     with catalog.write() as con:
         number = queue.enqueue(
             con, text=study.text, title=study.title, method=study.method, size=study.size, seed=study.seed,
@@ -96,10 +106,14 @@ def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
 
 @dataclass
 class Watch:
-    """What a worker tells and listens to: called with (job, done builds, total builds); `stop` ends it between tasks."""
+    """What a worker tells and listens to: called with (job, done builds, total builds); `stop` ends it between tasks.
+
+    stopped: whether it left something undone for that.
+    """
 
     progress: Callable = lambda job, done, total: None
     stop: threading.Event = field(default_factory=threading.Event)
+    stopped: bool = False
 
 
 def work(catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None = None) -> list[int]:
@@ -117,6 +131,7 @@ def work(catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None =
             if _Run(catalog, job, worker, threads=threads, watch=watch).run():
                 finished.append(job.id)
         except Stopped:
+            watch.stopped = True
             break
         except HoldtightError as error:
             with catalog.write() as con:

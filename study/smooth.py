@@ -3,7 +3,7 @@
 What is left after the nearest step depends on every error that moves the angle, in a saw-tooth: shares of variance by
 source would then book the workshop's rounding on pivots that have no part in it. Here the residual of every stepped
 adjuster, uniform over ± half a step, is one more scalar of the source that tells how far off the workshop leaves that
-angle. Rankings are taken so; distributions, the worst build and verdicts are taken with the real steps.
+angle. Sobol' and Morris draw so; spread, the worst build and verdicts are taken with the real steps.
 """
 
 from dataclasses import dataclass

@@ -1,7 +1,6 @@
 """What the commands share: options, printing, and finding a geometry."""
 
 import json
-import math
 import re
 import sys
 from pathlib import Path
@@ -20,6 +19,7 @@ CatalogOption = Annotated[
 JsonOption = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
 
 UNBROKEN = ("measure", "source", "geometry", "study", "point")  # columns whose words are not broken
+MOST_TRAVEL = 1000.0  # mm or degrees; no suspension goes further
 WIDTH_UNSEEN = 120  # columns where the output goes to a file or a pipe
 _CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]")
 
@@ -96,10 +96,10 @@ class OptionError(InputError):
 
 
 def finite(options: dict[str, float]) -> None:
-    """Refuse options that are no finite numbers. Raises OptionError."""
+    """Refuse options that are no numbers of a size that a suspension knows. Raises OptionError."""
     for name, value in options.items():
-        if not math.isfinite(value):
-            raise OptionError(f"{name} {value}: must be a finite number")
+        if not abs(value) <= MOST_TRAVEL:
+            raise OptionError(f"{name} {value:g}: must be a number within ±{MOST_TRAVEL:g}")
 
 
 def by_whom(given: str | None) -> str:

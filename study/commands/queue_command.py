@@ -16,10 +16,12 @@ def run(
 ) -> None:
     """Check studies against their geometries and queue them; `holdtight work` runs them."""
     from catalog.store import Catalog
-    from study.runner import enqueue, read_asked
+    from study.runner import check, enqueue, read_asked
 
     store = Catalog(catalog)
     studies = [(path, read_asked(store, path)) for path in files]
+    for path, study in studies:
+        check(store, study, path, by=by_whom(by))
     made = [
         {"study": enqueue(store, study, path.parent, by=by_whom(by)), "title": study.title, "file": str(path)}
         for path, study in studies

@@ -22,12 +22,13 @@ def run(
     from catalog.store import Catalog
     from study.commands.critical_command import print_ranking
     from study.commands.work_command import progress_watch, stop_on_signals
-    from study.runner import enqueue, read_asked, work
+    from study.runner import check, enqueue, read_asked, work
     from study.sheet_library import prepare
 
     prepare()
     store = Catalog(catalog)
     asked = read_asked(store, study)
+    check(store, asked, study, by=by_whom(by))
     number = enqueue(store, asked, study.parent, by=by_whom(by))
     with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
         finished = work(store, threads=threads or default_threads(), watch=watch, study_id=number)
@@ -38,18 +39,12 @@ def run(
     from study.handout import write_sheet
 
     dossier = load_dossier(store, number)
-    path = write_sheet(dossier, sheet or Path("sheets") / f"study-{number}.html")
+    path = sheet or Path("sheets") / f"study-{number}.html"
     if as_json:
-        print_json(
-            {
-                "study": number,
-                "geometry": dossier.study["geometry"],
-                "builds": dossier.study["builds"],
-                "sheet": str(path),
-            }
-        )
+        write_sheet(dossier, path)
+        facts = {key: dossier.study[key] for key in ("geometry", "builds", "good_share")}
+        print_json({"study": number, **facts, "sheet": str(path)})
         return
     print_ranking(dossier)
-    print(
-        f"sheet: {clean(path)}   (`holdtight sheet {number} --charts` writes its charts as SVG, PNG, PDF and Vega-Lite JSON)"
-    )
+    write_sheet(dossier, path)
+    print(f"sheet: {clean(path)}   (`holdtight sheet {number} --charts` writes its charts as SVG, PNG, PDF and Vega-Lite JSON)")

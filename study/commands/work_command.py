@@ -2,6 +2,7 @@
 
 import contextlib
 import signal
+import sys
 from typing import Annotated
 
 import typer
@@ -20,7 +21,7 @@ def run(
 
     with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
         finished = work(Catalog(catalog), threads=threads or default_threads(), watch=watch)
-    if watch.stop.is_set():
+    if watch.stop.is_set() and watch.stopped:
         print("stopped; what is finished is kept, `holdtight work` goes on with it")
         raise typer.Exit(1)
     if as_json:
@@ -38,7 +39,7 @@ def progress_watch(*, quiet=False):
     from study.runner import Watch
 
     columns = (TextColumn("study {task.description}"), BarColumn(), TextColumn("{task.completed}/{task.total} builds"))
-    bar = Progress(*columns, TimeRemainingColumn(), console=Console(stderr=True), disable=quiet, transient=True)
+    bar = Progress(*columns, TimeRemainingColumn(), console=Console(stderr=True), disable=quiet or not sys.stderr.isatty(), transient=True)
     rows = {}
 
     def progress(job, done, total):
