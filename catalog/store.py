@@ -22,6 +22,7 @@ if TYPE_CHECKING:
 DEFAULT_NAME = "holdtight.duckdb"
 WAIT_S = 20.0
 DAMAGE = ("Could not read enough bytes", "Corrupt database", "checksum")
+FULL = ("No space left on device", "File too large", "Disk quota exceeded", "There is not enough space")
 _turns: dict[Path, threading.Lock] = {}
 _turns_guard = threading.Lock()
 
@@ -50,6 +51,10 @@ class CatalogFailed(WorkError):
     """The database refused an operation, for instance because the disk is full."""
 
 
+class CatalogGone(WorkError):
+    """The file was there and was taken away while it was in use."""
+
+
 def catalog_path(given: str | os.PathLike | None = None) -> Path:
     """The catalog's path: the one given, else HOLDTIGHT_CATALOG, else holdtight.duckdb here."""
     return Path(given or os.environ.get("HOLDTIGHT_CATALOG") or DEFAULT_NAME)
@@ -64,6 +69,7 @@ class Catalog:
     def __init__(self, path: str | os.PathLike | None = None, *, wait_s: float = WAIT_S) -> None:
         self.path = catalog_path(path)
         self.wait_s = wait_s
+        self._seen = False
 
     @contextlib.contextmanager
     def write(self) -> "Iterator[DuckDBPyConnection]":
@@ -91,6 +97,23 @@ class Catalog:
             yield con
 
     @contextlib.contextmanager
+    def still(self) -> "Iterator[DuckDBPyConnection]":
+        """The file at rest: all that is kept stands in it, and nobody writes to it meanwhile. To copy it.
+
+        Opening the file within this process would drop the lock: let another process copy.
+        """
+        try:
+            with self._turn(), self._opened(read_only=False) as con:
+                con.execute("CHECKPOINT")
+                yield con
+        except CatalogNotWritable:
+            wal = _wal(self.path)
+            if wal.exists() and wal.stat().st_size:
+                raise
+            with self.read() as con:
+                yield con
+
+    @contextlib.contextmanager
     def _turn(self) -> Iterator[None]:
         """One user of the file at a time within this process."""
         with _turns_guard:
@@ -116,9 +139,16 @@ class Catalog:
                 raise CatalogForeign(
                     f"{self.path}: is damaged ({_first_line(problem)}); restore a copy."
                 ) from problem
-            raise CatalogFailed(f"{self.path}: the catalog refused this: {_first_line(problem)}") from problem
+            raise self._failed(problem) from problem
         finally:
             con.close()
+
+    def _failed(self, problem: Exception) -> CatalogFailed:
+        if any(sign in str(problem) for sign in FULL):
+            return CatalogFailed(
+                f"{self.path}: the disk is full; make room and do this again. What was kept before is still there."
+            )
+        return CatalogFailed(f"{self.path}: the catalog refused this: {_first_line(problem)}")
 
     def _open(self, *, read_only: bool) -> "DuckDBPyConnection":
         """An open connection to a catalog of the newest schema."""
@@ -164,6 +194,7 @@ class Catalog:
                 self._raise_unless_busy(problem, read_only=read_only, late=time.monotonic() > deadline)
             else:
                 if before == _identity(self.path):
+                    self._seen = True
                     return con
                 con.close()  # a migration put another file here between: this is the old one
             time.sleep(random.uniform(0.5, 1.5) * pause)
@@ -174,6 +205,8 @@ class Catalog:
         if path.is_dir():
             raise CatalogForeign(f"{path}: is a folder; name a file, for instance {path / DEFAULT_NAME}.")
         if not path.exists():
+            if self._seen:
+                raise self._gone()
             if read_only:
                 raise CatalogMissing(f"{path}: there is no catalog; `holdtight add` makes one.")
             if not path.parent.is_dir():
@@ -182,9 +215,24 @@ class Catalog:
                 raise CatalogNotWritable(
                     f"{path}: the folder {path.parent} may not be written; choose another."
                 )
-            migrate.create(path)
+            self._create()
         elif not read_only and not (os.access(path, os.W_OK) and os.access(path.parent, os.W_OK)):
             raise CatalogNotWritable(f"{path}: file or folder is read-only; allow writing or use a copy.")
+
+    def _gone(self) -> CatalogGone:
+        return CatalogGone(f"{self.path}: the catalog was taken away meanwhile; put it or a backup back, then go on.")
+
+    def _create(self) -> None:
+        import duckdb
+
+        try:
+            migrate.create(self.path)
+        except (duckdb.Error, OSError) as problem:
+            if "Permission denied" in str(problem) or "Read-only file system" in str(problem):
+                raise CatalogNotWritable(
+                    f"{self.path}: the folder {self.path.parent} may not be written; choose another."
+                ) from problem
+            raise self._failed(problem) from problem
 
     def _raise_unless_busy(self, problem: Exception, *, read_only: bool, late: bool) -> None:
         text = str(problem)
@@ -204,11 +252,25 @@ class Catalog:
             raise CatalogTooNew(
                 f"{self.path}: {_first_line(problem)}; use a newer duckdb package."
             ) from problem
+        if any(sign in text for sign in FULL):
+            raise self._failed(problem) from problem
+        if "WAL" in text and ("does not match" in text or "replaying" in text):
+            wal = _wal(self.path)
+            raise CatalogForeign(
+                f"{self.path}: {wal.name} beside it is of another catalog, of an older copy, or damaged;"
+                f" move {wal} away, then try again."
+            ) from problem
         if "database does not exist" in text:  # taken away between look and open
+            if self._seen:
+                raise self._gone() from problem
             raise CatalogMissing(f"{self.path}: there is no catalog any more.") from problem
         raise CatalogForeign(
             f"{self.path}: is no catalog or is damaged ({_first_line(problem)}); restore a copy."
         ) from problem
+
+
+def _wal(path: Path) -> Path:
+    return path.with_name(path.name + ".wal")
 
 
 def _identity(path: Path) -> tuple[int, int] | None:

@@ -26,6 +26,7 @@ from study.tabulate import tables
 from study.tasks import Outcome, StudyWork
 
 HEARTBEAT_S = 10.0
+HELD_BYTES = 64 * 2**20
 KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the catalog has a price of its own
 
 
@@ -83,18 +84,19 @@ def geometry_of(catalog: Catalog, study: Study, folder: Path, *, by: str):
     return register(catalog, geometry, by=by, why="named by a study"), geometry
 
 
-def check(catalog: Catalog, study: Study, path: Path, *, by: str) -> None:
-    """Raise StudyDoesNotFit where the study of a file asks its geometry for what it does not have or cannot do."""
-    revision, geometry = geometry_of(catalog, study, path.parent, by=by)
+def check(catalog: Catalog, study: Study, folder: Path, *, by: str) -> revisions.Revision:
+    """The revision that a study names; StudyDoesNotFit where the study asks of it what it does not have or cannot do."""
+    revision, geometry = geometry_of(catalog, study, folder, by=by)
     try:
         StudyWork(geometry, study)
     except InputError as error:
-        raise StudyDoesNotFit(f"{path}: on {revision.spec}: {error}") from None
+        raise StudyDoesNotFit(f'study "{study.title}" on {revision.spec}: {error}') from None
+    return revision
 
 
 def enqueue(catalog: Catalog, study: Study, folder: Path, *, by: str) -> int:
-    """Queue a study that was checked. Gives its number."""
-    revision, _ = geometry_of(catalog, study, folder, by=by)
+    """Check a study and queue it. Gives its number."""
+    revision = check(catalog, study, folder, by=by)
     with catalog.write() as con:
         number = queue.enqueue(
             con, text=study.text, title=study.title, method=study.method, size=study.size, seed=study.seed,
@@ -163,19 +165,25 @@ class _Run:
         self.work = StudyWork(geometry, self.study)
         self.total = sum(self.work.builds(task) for task in self.work.tasks)
         outcomes = self._kept()
-        self.done = sum(len(o.status) for o in outcomes.values())
+        self.done = sum(self.work.builds(task) for task in self.work.tasks if task.number in outcomes)
         if not self._alive() or not self._do([t for t in self.work.tasks if t.number not in outcomes], outcomes):
             return False
         return self._finish(outcomes)
 
     def _kept(self):
-        outcomes = {}
+        """What an earlier worker left finished."""
+        outcomes = _Outcomes(self._load)
         with self.catalog.read() as con:
-            query = "SELECT stage, chunk_no FROM kept.chunks WHERE study_id = ?"
-            for stage, number in con.execute(query, [self.job.id]).fetchall():
-                arrays, status = load_chunk(con, self.job.id, stage=stage, chunk_no=number)
-                outcomes[number] = _from_arrays(self.work.tasks[number], arrays, status)
+            query = "SELECT chunk_no FROM kept.chunks WHERE study_id = ?"
+            for (number,) in con.execute(query, [self.job.id]).fetchall():
+                outcomes.numbers.add(number)
         return outcomes
+
+    def _load(self, number):
+        task = self.work.tasks[number]
+        with self.catalog.read() as con:
+            arrays, status = load_chunk(con, self.job.id, stage=task.stage, chunk_no=number)
+        return _from_arrays(task, arrays, status)
 
     def _do(self, tasks, outcomes):
         """Tasks on threads, at most two a thread in flight; the main thread keeps what comes back, in any order."""
@@ -207,7 +215,7 @@ class _Run:
             return False
         if stop or last or late:
             for task, outcome, _ in fresh:
-                outcomes[task.number] = outcome
+                outcomes.add(task.number, outcome)
                 self.done += len(outcome.status)
             fresh.clear()
             self.watch.progress(self.job, self.done, self.total)
@@ -250,6 +258,25 @@ class _Run:
         facts["stages"] = list(self.work.stages)
         with self.catalog.write() as con:
             return queue.finish(con, self.job.id, self.worker, tables={"study": [facts], **found})
+
+
+class _Outcomes:
+    """Finished tasks by number: in memory up to HELD_BYTES, beyond that read back from the catalog when asked for."""
+
+    def __init__(self, load):
+        self.load, self.numbers, self.held, self.size = load, set(), {}, 0
+
+    def __contains__(self, number) -> bool:
+        return number in self.numbers
+
+    def __getitem__(self, number) -> Outcome:
+        return self.held[number] if number in self.held else self.load(number)
+
+    def add(self, number, outcome) -> None:
+        self.numbers.add(number)
+        if self.size + outcome.values.nbytes <= HELD_BYTES:
+            self.held[number] = outcome
+            self.size += outcome.values.nbytes
 
 
 def _to_arrays(task, outcome, measures):

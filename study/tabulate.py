@@ -41,9 +41,22 @@ def tables(work: StudyWork, outcomes: dict) -> tuple[dict[str, list[dict]], dict
     _verdicts(work, outcomes, out, facts)
     curves = next(task for task in work.tasks if task.kind == "curves")
     out["curves"] = _curves(work, curves, outcomes[curves.number])
-    facts["builds"] += sum(len(o.status) for t, o in ((t, outcomes[t.number]) for t in work.tasks) if t.kind != "worst")
+    facts["builds"] += sum(work.builds(task) for task in work.tasks if task.kind != "worst")
     facts["perfect"] = list(work.model.perfect)
     return out, facts
+
+
+def _gathered(work, tasks, outcomes):
+    """Values (rows, builds) and status (builds,) of all draws, filled task by task so that none is held twice."""
+    if not tasks:
+        return None, None
+    ends = np.cumsum([0] + [work.builds(task) for task in tasks])
+    values, status = None, np.empty(ends[-1], np.uint8)
+    for task, start, end in zip(tasks, ends[:-1], ends[1:], strict=True):
+        outcome = outcomes[task.number]
+        values = np.empty((len(outcome.values), ends[-1])) if values is None else values
+        values[:, start:end], status[start:end] = outcome.values, outcome.status
+    return values, status
 
 
 class _Stage:
@@ -56,9 +69,7 @@ class _Stage:
         tasks = [t for t in work.tasks if t.stage == stage]
         effects = outcomes[next(t.number for t in tasks if t.kind == "effects")].values
         self.linear = LinearModel(work, stage, effects)
-        drawn = [outcomes[t.number] for t in tasks if t.kind == "draws"]
-        self.drawn = np.concatenate([o.values for o in drawn], axis=1) if drawn else None
-        self.status = np.concatenate([o.status for o in drawn]) if drawn else None
+        self.drawn, self.status = _gathered(work, [t for t in tasks if t.kind == "draws"], outcomes)
         self.worst = next((outcomes[t.number] for t in tasks if t.kind == "worst"), None)
         self.lots = next((outcomes[t.number] for t in tasks if t.kind == "lots"), None)
         gone = {"alignment.toe", "alignment.camber", "alignment.caster"} if stage == "before" else set()
@@ -213,7 +224,9 @@ class _Stage:
             return self._linear_draws(), (np.zeros(LINEAR_DRAWS, bool), np.zeros(LINEAR_DRAWS, bool))
         rows = self.work.method.independent_rows(self.work.problem, self.study.size)
         a = (self.drawn.shape[0] - m) // 2
-        ran_out = self.drawn[m + a :, rows].any(axis=0)
+        if len(rows) == self.drawn.shape[1]:
+            rows = slice(None)  # no copy of what may be large
+        ran_out = (self.drawn[m + a :, rows] > 0).any(axis=0)
         return self.drawn[:m, rows], (self.status[rows] > 0, ran_out)
 
     def _linear_draws(self):

@@ -10,6 +10,7 @@ from catalog.errors import HoldtightError
 COMMANDS = (
     "run", "evaluate", "sweep", "measures", "add", "geometries", "show", "queue", "work", "studies", "cancel",
     "critical", "compare", "allocate", "sheet", "release", "releases", "schema", "processes", "sql", "export", "as-built",
+    "backup", "check",
 )  # fmt: skip
 
 app = typer.Typer(

@@ -20,8 +20,8 @@ def run(
 
     store = Catalog(catalog)
     studies = [(path, read_asked(store, path)) for path in files]
-    for path, study in studies:
-        check(store, study, path, by=by_whom(by))
+    for path, study in studies if len(studies) > 1 else ():
+        check(store, study, path.parent, by=by_whom(by))
     made = [
         {"study": enqueue(store, study, path.parent, by=by_whom(by)), "title": study.title, "file": str(path)}
         for path, study in studies

@@ -103,8 +103,9 @@ def _charts(dossier, *, quiet):
 
     from study.release_contents import charts
 
+    console = Console(stderr=True)
     columns = (TextColumn("charts"), BarColumn(), MofNCompleteColumn(), TimeRemainingColumn())
-    with Progress(*columns, console=Console(stderr=True), disable=quiet, transient=True) as bar:
+    with Progress(*columns, console=console, disable=quiet or not console.is_terminal, transient=True) as bar:
         row = bar.add_task("charts", total=None)
         return charts(dossier, progress=lambda done, total: bar.update(row, completed=done, total=total))
 

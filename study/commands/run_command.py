@@ -22,13 +22,12 @@ def run(
     from catalog.store import Catalog
     from study.commands.critical_command import print_ranking
     from study.commands.work_command import progress_watch, stop_on_signals
-    from study.runner import check, enqueue, read_asked, work
+    from study.runner import enqueue, read_asked, work
     from study.sheet_library import prepare
 
     prepare()
     store = Catalog(catalog)
     asked = read_asked(store, study)
-    check(store, asked, study, by=by_whom(by))
     number = enqueue(store, asked, study.parent, by=by_whom(by))
     with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
         finished = work(store, threads=threads or default_threads(), watch=watch, study_id=number)

@@ -40,7 +40,7 @@ def pages(tmp_path_factory):
     made = {}
     for part in ("chassis", "upright"):
         head = Head("FS-101", "B", part, "Ann", datetime(2025, 12, 1), 1, None, "front-wishbone@1", "0.1.0", supersedes_issue="A")
-        record, rows = draft(dossier, head, Said(datums=["A|B|C"], condition=["welded"], checked=["CMM"], reason=["first", "*_rear_*=x"]))
+        record, rows = draft(dossier, head, Said(datums=["A|B|C"], condition=["welded"], checked=["CMM"], reason=["first", "*o*=another"]))
         path = folder / f"{part}.html"
         path.write_text(page(record | {"record_hash": "0" * 64}, rows, picture(dossier, part, rows)), encoding="utf-8")
         made[part] = path.as_uri()
