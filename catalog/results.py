@@ -91,6 +91,38 @@ def critical(con: "DuckDBPyConnection", *, best: int = 3) -> list[dict[str, Any]
     return fetch_rows(con, query, [best])
 
 
+def holds(con: "DuckDBPyConnection", *, linkage: str | None = None, axle: str | None = None) -> list[dict[str, Any]]:
+    """Sources whose verdict is `hold` in the newest judged study of a geometry's newest revision, over the catalog.
+
+    A row a source: geometries (specs), since (UTC, when a study first said so), measures it leads (rank 1 to 3).
+    linkage, axle: only these geometries.
+    """
+    query = """
+        WITH judged AS (
+            SELECT s.id, s.finished, s.final_stage, r.geometry_id, r.number, g.name || '@' || r.number AS spec
+            FROM kept.studies s JOIN kept.revisions r ON r.id = s.revision_id JOIN kept.geometries g ON g.id = r.geometry_id
+            WHERE s.state = 'done' AND (? IS NULL OR r.linkage = ?) AND (? IS NULL OR r.axle = ?)
+              AND s.id IN (SELECT study_id FROM kept.verdicts)
+        ), newest AS (
+            SELECT * FROM judged
+            QUALIFY row_number() OVER (PARTITION BY geometry_id ORDER BY number DESC, finished DESC, id DESC) = 1
+        ), leads AS (
+            SELECT n.id, k.source, list(k.measure ORDER BY k.measure_no) AS measures FROM newest n
+            JOIN kept.ranking k ON k.study_id = n.id AND k.stage = n.final_stage AND k."rank" <= 3 GROUP BY ALL
+        ), first_said AS (
+            SELECT v.source, min(j.finished) AS since FROM judged j JOIN kept.verdicts v ON v.study_id = j.id
+            WHERE v.verdict = 'hold' GROUP BY ALL
+        )
+        SELECT v.source, list(n.spec ORDER BY n.spec) AS geometries, any_value(f.since) AS since,
+               list_distinct(flatten(list(coalesce(l.measures, [])))) AS measures
+        FROM newest n JOIN kept.verdicts v ON v.study_id = n.id AND v.verdict = 'hold'
+        JOIN first_said f ON f.source = v.source
+        LEFT JOIN leads l ON l.id = n.id AND l.source = v.source
+        GROUP BY v.source ORDER BY len(geometries) DESC, v.source
+    """
+    return fetch_rows(con, query, [linkage, linkage, axle, axle])
+
+
 def final_stage(tables: Tables) -> str | None:
     """The stage at which the answer is read: after where it was run, else before."""
     stages = {row.get("stage") for name in ("ranking", "stats", "worst") for row in tables.get(name, ())}

@@ -5,11 +5,13 @@ its geometry, so a study that was interrupted goes on with the tasks that are no
 """
 
 import contextlib
+import json
 import threading
 import time
 from collections.abc import Callable
 from concurrent.futures import FIRST_COMPLETED, ThreadPoolExecutor, wait
 from dataclasses import dataclass, field
+from functools import partial
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 
@@ -19,9 +21,11 @@ from threadpoolctl import threadpool_limits
 from catalog import processes, queue, revisions
 from catalog.chunks import load_chunk, store_chunk
 from catalog.errors import HoldtightError, InputError, WorkError
+from catalog.geometry import from_record, to_record
 from catalog.store import Catalog, CatalogMissing
+from study.cluster import ClusterLost, ClusterPool
 from study.dossier import kept_study
-from study.study_file import Study, read_study
+from study.study_file import Study, parse_study, read_study
 from study.tabulate import tables
 from study.tasks import Outcome, StudyWork
 
@@ -118,10 +122,13 @@ class Watch:
     stopped: bool = False
 
 
-def work(catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None = None) -> list[int]:
+def work(
+    catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None = None, pool: ClusterPool | None = None
+) -> list[int]:
     """Run queued studies (or just one) until none is left. Gives the numbers of those that were finished.
 
-    A study that fails is marked so and the next one is taken; with `study_id` its error is raised.
+    A study that fails is marked so and the next one is taken; with `study_id` its error is raised. Tasks are done on
+    threads, or by the workers of a `pool`; when that is lost the study goes back into the queue. Raises ClusterLost.
     """
     worker, finished = queue.worker_name(), []
     while not watch.stop.is_set():
@@ -130,11 +137,15 @@ def work(catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None =
         if job is None:
             break
         try:
-            if _Run(catalog, job, worker, threads=threads, watch=watch).run():
+            if _Run(catalog, job, worker, threads=threads, watch=watch, pool=pool).run():
                 finished.append(job.id)
         except Stopped:
             watch.stopped = True
             break
+        except ClusterLost:
+            with catalog.write() as con:
+                queue.release(con, job.id, worker)
+            raise
         except HoldtightError as error:
             with catalog.write() as con:
                 queue.fail(con, job.id, worker, error=str(error))
@@ -149,11 +160,28 @@ def work(catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None =
     return finished
 
 
+def to_plain(geometry, study: Study) -> str:
+    """All that a study's tasks depend on, as JSON."""
+    geometry_parts = {"record": to_record(geometry), "text": geometry.text}
+    resolved = {name: dict(entry) for name, entry in study.resolved.items()}
+    return json.dumps({"geometry": geometry_parts, "study": study.text, "processes": resolved})
+
+
+def from_plain(plain: str) -> StudyWork:
+    """The work of a study from what to_plain gave."""
+    parts = json.loads(plain)
+    kept = {name: (entry["zone"], entry["looser"]) for name, entry in parts["processes"].items()}
+    book = processes.KeptBook(0, kept)
+    study = parse_study(parts["study"], source="study", processes=book, looser=book.looser)
+    return StudyWork(from_record(parts["geometry"]["record"], text=parts["geometry"]["text"]), study)
+
+
 class _Run:
     """One study, from its claim to its results."""
 
-    def __init__(self, catalog, job, worker, *, threads, watch):
+    def __init__(self, catalog, job, worker, *, threads, watch, pool):
         self.catalog, self.job, self.worker, self.threads, self.watch = catalog, job, worker, threads, watch
+        self.pool = pool
         self.started = time.monotonic()
         self.last_sign = self.started
 
@@ -186,22 +214,32 @@ class _Run:
         return _from_arrays(task, arrays, status)
 
     def _do(self, tasks, outcomes):
-        """Tasks on threads, at most two a thread in flight; the main thread keeps what comes back, in any order."""
+        """Tasks to threads or a pool, at most two a thread in flight; the main thread keeps what comes back, in any order."""
         waiting, running, fresh = list(reversed(tasks)), {}, []
+        with self._hands() as (submit, size):
+            while waiting or running or fresh:
+                while waiting and len(running) < 2 * size:
+                    task = waiting.pop()
+                    running[submit(task)] = task
+                ready = wait(running, timeout=0.1, return_when=FIRST_COMPLETED).done if running else ()
+                fresh += [(running.pop(future), *future.result()) for future in ready]
+                last = not (waiting or running)
+                if not self._go_on(fresh, outcomes, last=last):
+                    return False
+        return True
+
+    @contextlib.contextmanager
+    def _hands(self):
+        """(submit: task to future of (outcome, seconds), how many tasks are done at a time)."""
+        if self.pool is not None:
+            with self.pool.of(from_plain, to_plain(self.work.geometry, self.study)) as hands:
+                yield hands.submit, hands.size
+            return
         with threadpool_limits(1), ThreadPoolExecutor(self.threads) as pool:
             try:
-                while waiting or running or fresh:
-                    while waiting and len(running) < 2 * self.threads:
-                        task = waiting.pop()
-                        running[pool.submit(self._timed, task)] = task
-                    ready = wait(running, timeout=0.1, return_when=FIRST_COMPLETED).done if running else ()
-                    fresh += [(running.pop(future), *future.result()) for future in ready]
-                    last = not (waiting or running)
-                    if not self._go_on(fresh, outcomes, last=last):
-                        return False
+                yield partial(pool.submit, self._timed), self.threads
             finally:
                 pool.shutdown(wait=False, cancel_futures=True)
-        return True
 
     def _timed(self, task):
         start = time.monotonic()

@@ -21,6 +21,8 @@ def run(
         str | None, typer.Option(help="before or after alignment; else the last the study has.", show_default=False)
     ] = None,
     most: Annotated[int, typer.Option(help="Sources shown for each measure.", min=1)] = 6,
+    linkage: Annotated[str | None, typer.Option(help="Over the catalog: only geometries of this linkage.", show_default=False)] = None,
+    axle: Annotated[str | None, typer.Option(help="Over the catalog: only front or only rear axles.", show_default=False)] = None,
     as_json: JsonOption = False,
     catalog: CatalogOption = None,
 ) -> None:
@@ -29,7 +31,7 @@ def run(
 
     store = Catalog(catalog)
     if study is None:
-        _over_catalog(store, as_json)
+        _over_catalog(store, linkage, axle, as_json)
         return
     from study.dossier import load_dossier
 
@@ -290,24 +292,41 @@ def _print_good(dossier):
         print("lost to: " + ", ".join(f"{clean(what)} {100 * share:.1f} %" for share, what in sorted(lost, reverse=True)))
 
 
-def _over_catalog(store, as_json):
+def _over_catalog(store, linkage, axle, as_json):
+    """The pivots to hold over all geometries, and what leads each measure of each."""
     from catalog import results
 
     with store.read() as con:
-        found = results.critical(con)
+        held = results.holds(con, linkage=linkage, axle=axle)
+        found = [r for r in results.critical(con) if _counts(r)]
+    if linkage or axle:
+        with store.read() as con:
+            found = [r for r in found if r["geometry"] in _named(con, linkage, axle)]
     if as_json:
-        print_json(found)
+        print_json({"hold": [r | {"since": r["since"].isoformat()} for r in held], "critical": found})
         return
-    columns = [
-        ("geometry", "left"),
-        ("study", "right"),
-        ("measure", "left"),
-        ("", "right"),
-        ("source", "left"),
-        ("share", "right"),
-    ]
+    columns = [("source", "left"), ("hold in", "right"), ("since (UTC)", "left"), ("leads", "left"), ("geometries", "left")]
     rows = [
-        [f"{r['geometry']}@{r['revision']}", str(r["study"]), r["measure"], str(r["rank"]), r["source"], _percent(r["st"] if r["st"] is not None else r["linear_share"])]
+        [r["source"], str(len(r["geometries"])), f"{r['since']:%Y-%m-%d}", ", ".join(r["measures"]) or "–", ", ".join(r["geometries"])]
+        for r in held
+    ]  # fmt: skip
+    if rows:
+        print_table("pivots to hold: verdicts of the newest judged study of each geometry", columns, rows)
+    columns = [("geometry", "left"), ("study", "right"), ("measure", "left"), ("", "right"), ("source", "left"), ("share", "right"), ("verdict", "left")]
+    rows = [
+        [f"{r['geometry']}@{r['revision']}", str(r["study"]), r["measure"], str(r["rank"]), r["source"],
+         _percent(r["st"] if r["st"] is not None else r["linear_share"]), r["verdict"] or ""]
         for r in found
     ]  # fmt: skip
-    print_table("critical pivots: the newest finished study of each revision", columns, rows)
+    print_table("\ncritical pivots: the newest finished study of each revision", columns, rows)
+
+
+def _counts(row):
+    """A drawing feature that does something; what the workshop leaves is no pivot."""
+    share = row["st"] if row["st"] is not None else row["linear_share"]
+    return not row["source"].startswith("alignment.") and share is not None and share >= 0.005
+
+
+def _named(con, linkage, axle):
+    query = "SELECT DISTINCT geometry FROM geometries WHERE (? IS NULL OR linkage = ?) AND (? IS NULL OR axle = ?)"
+    return {name for (name,) in con.execute(query, [linkage, linkage, axle, axle]).fetchall()}

@@ -21,6 +21,8 @@ def run(
         print_json({"geometry": label, "content_hash": record.content_hash, **to_record(record)})
     elif text:
         print(record.text)
+        if record.points_text:
+            print(record.points_text)
     else:
         _print(label, record)
 
@@ -28,11 +30,13 @@ def run(
 def _print(label, record):
     both = not record.right_is_mirror
     columns = [("point", "left"), *((f"{axis} mm", "right") for axis in "xyz")]
+    columns += [("shop's name", "left")] if record.shop_names else []
     columns += [(f"right {axis} mm", "right") for axis in "xyz"] if both else []
     rows = []
     for name, point in {**record.left.points, "wheel_centre": record.left.wheel.centre}.items():
         other = record.right.wheel.centre if name == "wheel_centre" else record.right.points[name]
-        rows.append([name, *(f"{v:.3f}" for v in point), *((f"{v:.3f}" for v in other) if both else ())])
+        shop = [record.shop_names.get(name, "")] if record.shop_names else []
+        rows.append([name, *(f"{v:.3f}" for v in point), *shop, *((f"{v:.3f}" for v in other) if both else ())])
     print_table(f"{label}: {record.linkage}, {record.vehicle.axle} axle", columns, rows)
     wheel = record.left.wheel
     print(f"wheel: loaded radius {wheel.loaded_radius_mm:g} mm, camber {wheel.camber_deg:g}°, toe {wheel.toe_deg:g}°")

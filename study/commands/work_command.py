@@ -12,6 +12,10 @@ from study.commands.common import CatalogOption, JsonOption, clean, default_thre
 
 def run(
     threads: Annotated[int, typer.Option(help="Threads; 0 takes one a core.", min=0, max=256)] = 0,
+    cluster: Annotated[
+        str | None,
+        typer.Option(metavar="ADDRESS", help="A Dask scheduler, HOST:PORT, whose workers do the tasks.", show_default=False),
+    ] = None,
     as_json: JsonOption = False,
     catalog: CatalogOption = None,
 ) -> None:
@@ -19,8 +23,8 @@ def run(
     from catalog.store import Catalog
     from study.runner import work
 
-    with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
-        finished = work(Catalog(catalog), threads=threads or default_threads(), watch=watch)
+    with pool_at(cluster) as pool, progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
+        finished = work(Catalog(catalog), threads=threads or default_threads(), watch=watch, pool=pool)
     if watch.stop.is_set() and watch.stopped:
         print("stopped; what is finished is kept, `holdtight work` goes on with it")
         raise typer.Exit(1)
@@ -28,6 +32,15 @@ def run(
         print_json({"finished": finished})
     else:
         print(f"finished: {', '.join(map(str, finished)) or 'nothing was queued'}")
+
+
+def pool_at(address: str | None):
+    """The workers of the scheduler at an address, None without one."""
+    if address is None:
+        return contextlib.nullcontext()
+    from study.cluster import connected
+
+    return connected(address)
 
 
 @contextlib.contextmanager
