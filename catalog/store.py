@@ -162,7 +162,8 @@ class Catalog:
                         migrate.refresh_views(con)
                     return con
                 if not read_only:
-                    migrate.upgrade(con, self.path)
+                    with self._making():
+                        migrate.upgrade(con, self.path)
             except BaseException:
                 con.close()
                 raise
@@ -215,23 +216,29 @@ class Catalog:
                 raise CatalogNotWritable(
                     f"{path}: the folder {path.parent} may not be written; choose another."
                 )
-            self._create()
+            with self._making():
+                migrate.create(path)
         elif not read_only and not (os.access(path, os.W_OK) and os.access(path.parent, os.W_OK)):
             raise CatalogNotWritable(f"{path}: file or folder is read-only; allow writing or use a copy.")
 
     def _gone(self) -> CatalogGone:
         return CatalogGone(f"{self.path}: the catalog was taken away meanwhile; put it or a backup back, then go on.")
 
-    def _create(self) -> None:
+    @contextlib.contextmanager
+    def _making(self) -> Iterator[None]:
+        """What goes wrong with the disk while a file is made or migrated, as an error of ours."""
         import duckdb
 
         try:
-            migrate.create(self.path)
-        except (duckdb.Error, OSError) as problem:
-            if "Permission denied" in str(problem) or "Read-only file system" in str(problem):
+            yield
+        except (duckdb.Error, OSError, migrate.MigrationFailed) as problem:
+            text = str(problem)
+            if "Permission denied" in text or "Read-only file system" in text:
                 raise CatalogNotWritable(
                     f"{self.path}: the folder {self.path.parent} may not be written; choose another."
                 ) from problem
+            if isinstance(problem, migrate.MigrationFailed) and not any(sign in text for sign in FULL):
+                raise
             raise self._failed(problem) from problem
 
     def _raise_unless_busy(self, problem: Exception, *, read_only: bool, late: bool) -> None:

@@ -39,7 +39,9 @@ def write_charts(dossier, folder: Path) -> list[Path]:
 
 def _facts(dossier):
     asked = dossier.asked
-    return dossier.study | {"wanted_share": asked.wanted_share, "cars": asked.cars, "stages": list(dossier.stages)}
+    return dossier.study | {"wanted_share": asked.wanted_share, "cars": asked.cars, "stages": list(dossier.stages)} | {
+        "content_hash": dossier.geometry.content_hash, "created": str(dossier.study["created"]), "finished": str(dossier.study["finished"]),
+    }  # fmt: skip
 
 
 def _drawing(dossier):

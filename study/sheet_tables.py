@@ -52,6 +52,10 @@ def studied(study: dict, geometry: dict, alignment: list[dict]) -> Html:
                 "Computed in",
                 None if finite(study.get("seconds")) is None else f"{number(study['seconds'], 2)} s",
             ),
+            ("Asked by", study.get("by")),
+            ("Asked on (UTC)", _day(study.get("created"))),
+            ("Finished (UTC)", _day(study.get("finished"))),
+            ("Content of the geometry (SHA-256)", study.get("content_hash")),
             ("Program version", study.get("version")),
             ("Datums", geometry.get("datums")),
         ]
@@ -60,6 +64,10 @@ def studied(study: dict, geometry: dict, alignment: list[dict]) -> Html:
     return section(
         "studied", "What was studied, and with what", facts, _alignment(alignment), _perfect(study), text
     )
+
+
+def _day(moment) -> str | None:
+    return None if moment is None else str(moment)[:16]
 
 
 def _alignment(rows: list[dict]) -> Html:
@@ -148,10 +156,16 @@ def _stat_row(row: dict) -> list:
         numbers[2],
         numbers[3],
         number(row.get("rss")),
-        number(row.get("worst_case")),
+        _stack_ends(row),
         limits_text(row) or "–",
         good_percent(row.get("good_share")),
     ]
+
+
+def _stack_ends(row: dict) -> str:
+    """Both ends of the worst-case stack of the linear model."""
+    low, high = finite(row.get("worst_low")), finite(row.get("worst_high"))
+    return "–" if low is None or high is None else " to ".join(aligned((low, high)))
 
 
 def tolerance_table(tolerances: list[dict], tables: tb.Tables, stage: str) -> Html:

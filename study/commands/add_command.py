@@ -5,7 +5,7 @@ from typing import Annotated
 
 import typer
 
-from study.commands.common import CatalogOption, JsonOption, by_whom, clean, print_json
+from study.commands.common import CatalogOption, JsonOption, by_whom, clean, print_json, print_odd
 
 
 def run(
@@ -16,13 +16,17 @@ def run(
     catalog: CatalogOption = None,
 ) -> None:
     """Register geometries: the same content is the same revision, changed content a new one."""
+    from catalog import revisions
     from catalog.geometry_file import read_geometry
     from catalog.store import Catalog
     from study.runner import register
 
     store, made = Catalog(catalog), []
     for path in files:
-        revision = register(store, read_geometry(path), by=by_whom(by), why=why)
+        geometry = read_geometry(path)
+        revision = register(store, geometry, by=by_whom(by), why=why)
+        with store.read() as con:
+            print_odd(revisions.measures_of(con, revision), geometry)
         made.append({"geometry": revision.spec, "new": revision.is_new, "linkage": revision.linkage})
         if not as_json:
             print(f"{clean(revision.spec)}: {'registered' if revision.is_new else 'is there already, unchanged'}")

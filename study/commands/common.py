@@ -102,6 +102,14 @@ def finite(options: dict[str, float]) -> None:
             raise OptionError(f"{name} {value:g}: must be a number within ±{MOST_TRAVEL:g}")
 
 
+def print_odd(found: dict, geometry) -> None:
+    """Lines on the error stream about what is far from common practice; the command goes on."""
+    from study.sanity import odd_values
+
+    for line in odd_values(found, geometry):
+        print(f"holdtight: {clean(geometry.name)}: {clean(line)}", file=sys.stderr)
+
+
 def by_whom(given: str | None) -> str:
     """The name kept with what a command adds: the one given, else the login name."""
     import getpass

@@ -12,6 +12,7 @@ from study.commands.common import (
     geometry_named,
     number,
     print_json,
+    print_odd,
     print_table,
 )
 
@@ -30,6 +31,7 @@ def run(
     finite({"--bump": bump, "--roll": roll, "--rack": rack})
     record, label = geometry_named(geometry, catalog)
     found = evaluate(record, bump_mm=bump, roll_deg=roll, rack_mm=rack)
+    print_odd(found, record)
     if as_json:
         position = {"bump_mm": bump, "roll_deg": roll, "rack_mm": rack}
         print_json({"geometry": label, "position": position, **found})

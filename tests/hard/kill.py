@@ -27,7 +27,7 @@ class Others(threading.Thread):
     def __init__(self, shop: Shop):
         super().__init__(daemon=True)
         self.shop, self.stop, self.queued = shop, threading.Event(), []
-        self.path = shop.study("other", size=4, seed=2)
+        self.path = shop.study("other", size=8, seed=2)
 
     def run(self):
         turn = 0
@@ -57,7 +57,7 @@ def kill(shop: Shop, *, times: int, size: int, seed: int, pairs: bool = True) ->
         before = shop.chunks(current)
         crew = [shop.start("work", "--threads", "2", pause=0.05) for _ in range(1 + (pairs and kills % 3 == 2))]
         twice += len(crew) - 1
-        time.sleep(chance.uniform(0.1, 2.5))
+        _let_run(shop, current, len(before), kills % 3, chance)
         for process in crew:
             alive = process.poll() is None
             process.send_signal(signal.SIGKILL)
@@ -73,6 +73,17 @@ def kill(shop: Shop, *, times: int, size: int, seed: int, pairs: bool = True) ->
     shop.expect("a dead worker's study is taken over", code == 0 and shop.job(current).state == "done", out + err)
     _compare(shop, first, numbers)
     print(f"{kills} kills ({twice} rounds with two workers, {grown} rounds got chunks in), {len(numbers)} studies")
+
+
+def _let_run(shop: Shop, number: int, kept: int, mode: int, chance) -> None:
+    """Wait for a moment to kill at: soon after the start, soon after the claim, or soon after a chunk."""
+    end, worker = time.monotonic() + 10.0, shop.job(number).worker
+    while mode and time.monotonic() < end:
+        job = shop.job(number)
+        if job.state == "done" or (job.worker != worker if mode == 1 else len(shop.chunks(number)) > kept):
+            break
+        time.sleep(0.1)
+    time.sleep(chance.uniform(0.0, 1.0))
 
 
 def _compare(shop: Shop, first: int, numbers: list[int]) -> None:
