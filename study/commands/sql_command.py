@@ -1,7 +1,9 @@
 """`sql`: a question of your own to the catalog, which cannot change anything."""
 
+import os
 import sys
 import threading
+import time
 from typing import Annotated
 
 import typer
@@ -19,6 +21,7 @@ class Stopped(WorkError):
     """The user ended a query."""
 
 
+PATIENCE_S = 3.0
 READING = ("SELECT", "EXPLAIN")
 AT_ONCE = 10_000
 
@@ -105,9 +108,13 @@ def interruptible(con, ask):
         while not done.wait(0.05):  # not Thread.join: an interrupt inside it makes a thread look ended
             pass
     except KeyboardInterrupt:
+        late = time.monotonic() + PATIENCE_S
         while not done.is_set():  # an interrupt that comes between two steps of the query is lost: again
             con.interrupt()
             done.wait(0.05)
+            if time.monotonic() > late:  # some steps take none; the file is only read here, so the process may just end
+                print("holdtight: sql: the query was stopped", file=sys.stderr, flush=True)
+                os._exit(1)
         raise Stopped("sql: the query was stopped") from None
     found, problem = outcome[0]
     if problem is not None:
