@@ -91,6 +91,16 @@ def critical(con: "DuckDBPyConnection", *, best: int = 3) -> list[dict[str, Any]
     return fetch_rows(con, query, [best])
 
 
+def leading(con: "DuckDBPyConnection", *, most: int) -> tuple[int, list[dict[str, Any]]]:
+    """(rows of critical_pivots, and by measure and drawing feature in how many revisions it is the strongest, most first)."""
+    total = con.execute("SELECT count(*) FROM critical_pivots").fetchone()[0]
+    query = """
+        SELECT measure, source, count(*) AS revisions FROM critical_pivots
+        WHERE "rank" = 1 AND NOT starts_with(source, 'alignment.') GROUP BY ALL ORDER BY revisions DESC, measure, source LIMIT ?
+    """
+    return total, fetch_rows(con, query, [most])
+
+
 def holds(con: "DuckDBPyConnection", *, linkage: str | None = None, axle: str | None = None) -> list[dict[str, Any]]:
     """Sources whose verdict is `hold` in the newest judged study of a geometry's newest revision, over the catalog.
 

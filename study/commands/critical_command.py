@@ -54,6 +54,7 @@ def _stage(dossier, given):
     return given
 
 
+MOST_ROWS = 60
 RANKING_KEYS = (
     "source", "rank", "st", "st_low", "st_high", "s1", "s1_low", "s1_high", "linear_share", "mu_star", "mu_star_low",
     "mu_star_high", "effect_axes", "effect_unit", "effect_per_mm", "tied", "verdict",
@@ -298,20 +299,29 @@ def _over_catalog(store, linkage, axle, as_json):
 
     with store.read() as con:
         held = results.holds(con, linkage=linkage, axle=axle)
-        found = [r for r in results.critical(con) if _counts(r)]
-    if linkage or axle:
-        with store.read() as con:
-            found = [r for r in found if r["geometry"] in _named(con, linkage, axle)]
+        total, leads = results.leading(con, most=MOST_ROWS)
+        many = total > MOST_ROWS and not (as_json or linkage or axle)
+        found = [] if many else [r for r in results.critical(con) if _counts(r)]
+        if linkage or axle:
+            chosen = _named(con, linkage, axle)
+            found = [r for r in found if r["geometry"] in chosen]
     if as_json:
         print_json({"hold": [r | {"since": r["since"].isoformat()} for r in held], "critical": found})
         return
     columns = [("source", "left"), ("hold in", "right"), ("since (UTC)", "left"), ("leads", "left"), ("geometries", "left")]
     rows = [
-        [r["source"], str(len(r["geometries"])), f"{r['since']:%Y-%m-%d}", ", ".join(r["measures"]) or "–", ", ".join(r["geometries"])]
+        [r["source"], str(len(r["geometries"])), f"{r['since']:%Y-%m-%d}", _some(r["measures"]) or "–", _some(r["geometries"])]
         for r in held
     ]  # fmt: skip
     if rows:
         print_table("pivots to hold: verdicts of the newest judged study of each geometry", columns, rows)
+    if many:
+        _print_leading(total, leads)
+    else:
+        _print_critical(found)
+
+
+def _print_critical(found):
     columns = [("geometry", "left"), ("study", "right"), ("measure", "left"), ("", "right"), ("source", "left"), ("share", "right"), ("verdict", "left")]
     rows = [
         [f"{r['geometry']}@{r['revision']}", str(r["study"]), r["measure"], str(r["rank"]), r["source"],
@@ -319,6 +329,17 @@ def _over_catalog(store, linkage, axle, as_json):
         for r in found
     ]  # fmt: skip
     print_table("\ncritical pivots: the newest finished study of each revision", columns, rows)
+
+
+def _print_leading(total, leads):
+    """Over many geometries: how often a pivot is the strongest for a measure."""
+    columns = [("measure", "left"), ("source", "left"), ("strongest in", "right")]
+    rows = [[r["measure"], r["source"], f"{r['revisions']} revisions"] for r in leads]
+    print_table(f"\ncritical pivots: how often each is the strongest (`--json` lists all {total} rows)", columns, rows)
+
+
+def _some(names, most=6):
+    return ", ".join(names[:most]) + (f" and {len(names) - most} more" if len(names) > most else "")
 
 
 def _counts(row):
