@@ -118,6 +118,9 @@ def _checked(catalog: Catalog, what: str, names: list) -> Iterator[list[Finding]
                     waiting.pop()
         except (CatalogForeign, CatalogFailed) as problem:
             found.append([Finding(what, str(waiting.pop()), str(problem))])
+        except (ValueError, TypeError, LookupError, AttributeError) as problem:  # damage may read as anything
+            said = f"it is damaged and cannot be read ({type(problem).__name__}: {problem})"
+            found.append([Finding(what, str(waiting.pop()), said)])
         yield from found
         if waiting:
             time.sleep(PAUSE_S)

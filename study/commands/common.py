@@ -19,6 +19,7 @@ CatalogOption = Annotated[
 JsonOption = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
 
 UNBROKEN = ("measure", "source", "geometry", "study", "point")  # columns whose words are not broken
+WORKER_WAIT_S = 120.0  # a worker has work to lose, so it waits longer for its turn at the catalog than a question does
 MOST_TRAVEL = 1000.0  # mm or degrees; no suspension goes further
 WIDTH_UNSEEN = 120  # columns where the output goes to a file or a pipe
 _CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]")

@@ -5,7 +5,7 @@ from typing import Annotated
 
 import typer
 
-from study.commands.common import CatalogOption, JsonOption, by_whom, clean, default_threads, print_json
+from study.commands.common import WORKER_WAIT_S, CatalogOption, JsonOption, by_whom, clean, default_threads, print_json
 
 
 def run(
@@ -26,7 +26,7 @@ def run(
     from study.sheet_library import prepare
 
     prepare()
-    store = Catalog(catalog)
+    store = Catalog(catalog, wait_s=WORKER_WAIT_S)
     asked = read_asked(store, study)
     number = enqueue(store, asked, study.parent, by=by_whom(by))
     with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):

@@ -7,7 +7,7 @@ from typing import Annotated
 
 import typer
 
-from study.commands.common import CatalogOption, JsonOption, clean, default_threads, print_json
+from study.commands.common import WORKER_WAIT_S, CatalogOption, JsonOption, clean, default_threads, print_json
 
 
 def run(
@@ -24,7 +24,7 @@ def run(
     from study.runner import work
 
     with pool_at(cluster) as pool, progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
-        finished = work(Catalog(catalog), threads=threads or default_threads(), watch=watch, pool=pool)
+        finished = work(Catalog(catalog, wait_s=WORKER_WAIT_S), threads=threads or default_threads(), watch=watch, pool=pool)
     if watch.stop.is_set() and watch.stopped:
         print("stopped; what is finished is kept, `holdtight work` goes on with it")
         raise typer.Exit(1)
