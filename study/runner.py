@@ -22,7 +22,7 @@ from catalog import processes, queue, revisions
 from catalog.chunks import load_chunk, store_chunk
 from catalog.errors import HoldtightError, InputError, WorkError
 from catalog.geometry import from_record, to_record
-from catalog.store import Catalog, CatalogBusy, CatalogMissing
+from catalog.store import Catalog, CatalogBusy, CatalogFailed, CatalogGone, CatalogMissing, CatalogNotWritable
 from study.cluster import ClusterLost, ClusterPool
 from study.dossier import kept_study
 from study.study_file import Study, parse_study, read_study
@@ -146,7 +146,9 @@ def work(
             with catalog.write() as con:
                 queue.release(con, job.id, worker)
             raise
-        except CatalogBusy:  # the study stays claimed; the next worker takes it over and goes on with what is kept
+        except (CatalogBusy, CatalogFailed, CatalogGone, CatalogNotWritable):  # no fault of the study: it can go on later
+            with contextlib.suppress(HoldtightError), catalog.write() as con:
+                queue.release(con, job.id, worker)
             raise
         except HoldtightError as error:
             with catalog.write() as con:
