@@ -20,7 +20,7 @@ def run(
 ) -> None:
     """Add the geometry, queue and work the study, print the ranking, write the sheet."""
     from catalog.store import Catalog
-    from study.commands.critical_command import print_ranking
+    from study.commands.ranking_tables import print_ranking
     from study.commands.work_command import progress_watch, stop_on_signals
     from study.runner import enqueue, read_asked, work
     from study.sheet_library import prepare

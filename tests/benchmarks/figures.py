@@ -1,6 +1,7 @@
 """The figures this program is held to, measured in one run beside what a person would otherwise write.
 
-    python -m tests.benchmarks.figures
+    python -m tests.benchmarks.figures            two minutes
+    python -m tests.benchmarks.figures --long     with a million builds and growth curves
 
 Ratios count; absolute times depend on the machine. Nothing here fails a test: it prints what was reached.
 """
@@ -137,6 +138,44 @@ def start_of_the_command():
     return best(lambda: subprocess.run([sys.executable, "-m", "study.commands", "--help"], check=True, stdout=subprocess.DEVNULL))
 
 
+def memory(builds):
+    """(peak MiB, seconds) of a spread study of so many builds, in a process of its own."""
+    found = subprocess.run([sys.executable, "-m", "tests.benchmarks.memory", str(builds)], check=True, capture_output=True, text=True)
+    peak, seconds = found.stdout.split()
+    return float(peak), float(seconds)
+
+
+def critical_over_many():
+    """Seconds of what `critical` asks of a catalog of 1,000 geometries with 3 studies each, opening included."""
+    from catalog import results
+    from tests.benchmarks.crowded_catalog import make
+
+    with tempfile.TemporaryDirectory() as folder:
+        store = make(f"{folder}/c.duckdb")
+
+        def ask():
+            with store.read() as con:
+                results.holds(con)
+                results.leading(con, most=60)
+
+        return best(ask)
+
+
+def growth():
+    """Microseconds a build of the response against builds, positions and sources."""
+    rows = []
+    for what, builds, positions, errors in (
+        ("1,024 builds", 1024, 13, '"*" = { plus_minus = 1.0 }'), ("4,096 builds", 4096, 13, '"*" = { plus_minus = 1.0 }'),
+        ("16,384 builds", 16384, 13, '"*" = { plus_minus = 1.0 }'), ("3 positions", 4096, 3, '"*" = { plus_minus = 1.0 }'),
+        ("49 positions", 4096, 49, '"*" = { plus_minus = 1.0 }'), ("1 source", 4096, 13, '"tie_rod.length" = { length = 1.0 }'),
+    ):  # fmt: skip
+        sweep = f'[[measures]]\nof = "toe_deg"\nover = {{ bump = [-30, 30, {positions}] }}\ntake = "range"\n'
+        work = StudyWork(wishbone(), study(errors=errors, measures=sweep))
+        drawn = work.model.field.to_errors(np.random.default_rng(3).random((work.model.scalars, builds)))
+        rows.append((what, 1e6 * best(lambda work=work, drawn=drawn: work.after.evaluate(drawn), repeats=3) / builds))
+    return rows
+
+
 def main():
     rows = []
     ours, theirs = pose_with_twists()
@@ -149,8 +188,16 @@ def main():
     rows.append(("two threads against one", f"{one / two:.2f} x", "1.6 x", one / two >= 1.6))
     seconds = start_of_the_command()
     rows.append(("start of the command, --help", f"{seconds:.2f} s", "0.4 s", seconds < 0.4))
+    seconds = critical_over_many()
+    rows.append(("critical over 1,000 geometries with 3 studies each", f"{seconds:.2f} s", "0.3 s", seconds < 0.3))
+    (small, _), (large, took) = memory(16_384), memory(1_000_000 if "--long" in sys.argv else 131_072)
+    size = "1,000,000" if "--long" in sys.argv else "131,072"
+    rows.append((f"memory, {size} builds against 16,384", f"{large:.0f} against {small:.0f} MiB, {took:.0f} s", "500", large < 500))
     for what, found, wanted, reached in rows:
         print(f"{what:<56} {found:<44} wanted {wanted:<6} {'reached' if reached else 'MISSED'}")
+    if "--long" in sys.argv:
+        for what, micro in growth():
+            print(f"growth, {what:<20} {micro:8.1f} us a build (toe range over bump, before alignment)")
 
 
 if __name__ == "__main__":
