@@ -35,7 +35,7 @@ LINEAR_DRAWS = 4096
 def tables(work: StudyWork, outcomes: dict) -> tuple[dict[str, list[dict]], dict]:
     """(result tables, facts of the run) from the outcomes by task number."""
     out = {k: [] for k in TABLES}
-    facts = {"builds": 0, "dropped_blocks": 0, "unassembled": 0, "withheld": False, "notes": []}
+    facts = {"builds": 0, "dropped_blocks": 0, "unassembled": 0, "withheld": False, "notes": list(work.warnings)}
     for stage in work.stages:
         _Stage(work, stage, outcomes, out, facts).fill()
     _verdicts(work, outcomes, out, facts)
@@ -178,7 +178,8 @@ class _Stage:
         axes = list(source.axes)
         if axle and len(source.columns) == 2:
             axes = [f"left {a}" for a in axes] + [f"right {a}" for a in axes]
-        effect = None if is_nonlinear(measure) else [float(e) for e in self.linear.signed[i, columns]]
+        signed = self.linear.signed[i, columns]
+        effect = None if is_nonlinear(measure) or not np.isfinite(signed).all() else [float(e) for e in signed]
         size = None if effect is None else math.sqrt(sum(e * e for e in effect))
         return {
             "effect": effect,

@@ -107,7 +107,7 @@ def _rest(rows):
     shares = [row["st"] if row["st"] is not None else row["linear_share"] for row in rows]
     known = [s for s in shares if s is not None]
     if not known:
-        return "nothing here moves it" if rows else None
+        return "no value here, or nothing that moves it" if rows else None
     most = 100 * max(known)
     return f"{len(rows)} more sources, each under {max(1, math.ceil(most)):.0f} %"
 
