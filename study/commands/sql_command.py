@@ -1,6 +1,7 @@
 """`sql`: a question of your own to the catalog, which cannot change anything."""
 
 import os
+import signal
 import sys
 import threading
 import time
@@ -103,6 +104,7 @@ def interruptible(con, ask):
         finally:
             done.set()
 
+    before = signal.signal(signal.SIGINT, signal.default_int_handler)  # a job in the background starts with it ignored
     threading.Thread(target=work, name="query", daemon=True).start()
     try:
         while not done.wait(0.05):  # not Thread.join: an interrupt inside it makes a thread look ended
@@ -116,6 +118,8 @@ def interruptible(con, ask):
                 print("holdtight: sql: the query was stopped", file=sys.stderr, flush=True)
                 os._exit(1)
         raise Stopped("sql: the query was stopped") from None
+    finally:
+        signal.signal(signal.SIGINT, before)
     found, problem = outcome[0]
     if problem is not None:
         raise problem
