@@ -1,7 +1,6 @@
 """Every measure of the nominal geometry at one position, or along a sweep."""
 
 import math
-from dataclasses import replace
 from types import SimpleNamespace
 
 import numpy as np
@@ -39,6 +38,3 @@ def sweep(geometry, positions, keys=None) -> list[dict[str, dict[str, float | No
             found[side][key] = float(value) if math.isfinite(value) else None
         out.append(found)
     return out
-
-
-__all__ = ["evaluate", "replace", "sweep"]

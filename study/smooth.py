@@ -10,7 +10,6 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from study.linear_steps import step_moves
 from study.methods.problem import Problem
 from study.zone_field import ZoneField
 from study.zones import Zone
@@ -64,3 +63,11 @@ class Smooth:
         """Effects (P, D + residuals) of all scalars from those of the study's own (P, D)."""
         more = [effects[:, list(r.rows)] @ r.moves for r in self.residuals]
         return np.concatenate((effects, np.array(more).reshape(len(more), len(effects)).T), axis=1)
+
+
+def step_moves(gains, stepped) -> np.ndarray:
+    """M (S, S): degrees of the stepped angles per mm of the stepped settings, the other adjusters set again.
+
+    gains G (A, A): degrees per mm; stepped: their numbers. M = inv((G⁻¹)_SS).
+    """
+    return np.linalg.inv(np.linalg.inv(gains)[np.ix_(stepped, stepped)])

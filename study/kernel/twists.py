@@ -5,7 +5,6 @@ import numpy as np
 from study.kernel.rows import tyre_roll_rate
 from study.kernel.solve import factor, solve_each, substitute
 
-INPUTS = ("bump", "roll", "rack")
 LEAST_PIVOT = 1e-3  # rows are near unit length: a smaller pivot means that the nominal's order does not suit this build
 
 

@@ -9,7 +9,7 @@ from study.build import built_features
 from study.kernel import solve as kernel
 from study.kernel import vectors
 from study.kernel.rows import linearise, residuals, road_plane
-from study.stations import Hand, PositionError, Spot
+from study.stations import PositionError, Spot
 from tests.study.demo import response, spatial_corner, wishbone
 
 RNG = np.random.default_rng(4)
@@ -134,7 +134,6 @@ def test_large_errors_are_still_solved_by_the_careful_path():
 
 
 def test_hands_share_nothing_between_builds():
-    assert Hand is not None
     made = response(wishbone(), errors='"chassis.*" = { plus_minus = 1.0 }')
     errors = made.model.field.to_errors(RNG.random((made.model.scalars, 64)))
     whole = made.evaluate(errors).values
