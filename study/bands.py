@@ -5,14 +5,13 @@ builds along every sweep.
 """
 
 import math
-from types import SimpleNamespace
 
 import numpy as np
 
 from study.measures import KEYS
 from study.methods import spread
 from study.methods.problem import Problem
-from study.response import Response, Values
+from study.response import Values
 from study.study_measures import Measure
 
 QUANTILES = {"q05": 0.05, "q25": 0.25, "q50": 0.5, "q75": 0.75, "q95": 0.95}
@@ -25,13 +24,10 @@ def swept(key: str, *, side: str, over: str, positions, held=None) -> Measure:
     return Measure(f"{over}:{key}", key, side, at["bump"], at["roll"], at["rack"], over, sweep, "range", None)
 
 
-def builds_along(geometry, study, measures, *, stage: str, count: int) -> Values:
-    """The nominal and `count` builds of a study at every position of the swept measures; the nominal comes first."""
-    asked = SimpleNamespace(**{name: getattr(study, name) for name in ("errors", "alignment", "sides", "jigs")})
-    asked.measures = tuple(measures)
-    response = Response(geometry, asked, stage=stage)
+def builds_along(response, *, seed: int, count: int) -> Values:
+    """The nominal and `count` builds of a study's car (a Response asked for swept measures); the nominal comes first."""
     scalars = response.model.scalars
-    unit = spread.draw(Problem(np.zeros(scalars, int), 1), size=count, seed=study.seed + 1, first=0, count=count)
+    unit = spread.draw(Problem(np.zeros(scalars, int), 1), size=count, seed=seed + 1, first=0, count=count)
     errors = np.concatenate((np.zeros((scalars, 1)), response.model.field.to_errors(unit.T)), axis=1)
     return response.evaluate(errors)
 

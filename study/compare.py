@@ -51,7 +51,7 @@ def build_alike(geometries: dict, asked, *, builds: int = BUILDS) -> list[Built]
     for label, response in responses.items():
         unit = np.concatenate([drawn[name] for name in _widths(response)])
         values = response.evaluate(response.model.field.to_errors(unit))
-        found.append(Built(label, values.values, is_good(values, asked)))
+        found.append(Built(label, values.values, is_good(values, asked.measures)))
     return found
 
 

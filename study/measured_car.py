@@ -67,7 +67,8 @@ def evaluate(geometry, offsets: Offsets, *, bump_mm=0.0, roll_deg=0.0, rack_mm=0
         for key, info in KEYS.items()
         for side in (("axle",) if info.scope_on(response.solid) == "axle" else HANDS)
     ]
-    response._plan([Request(key, side, float(bump_mm), float(roll_deg), float(rack_mm)) for side, key in wanted])
+    at = float(bump_mm), float(roll_deg), float(rack_mm)
+    response = response.asking(requests=[Request(key, side, *at) for side, key in wanted])
     values = response.evaluate(_errors(response, offsets))
     if values.status[0]:
         raise NotAssembled(f"the car of the measured points {STATUS_TEXT[int(values.status[0])]}; check the points")

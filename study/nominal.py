@@ -1,12 +1,11 @@
 """Every measure of the nominal geometry at one position, or along a sweep."""
 
 import math
-from types import SimpleNamespace
 
 import numpy as np
 
 from study.measures import KEYS
-from study.response import NO_STUDY, Request, Response
+from study.response import Request, Response
 
 
 def evaluate(geometry, *, bump_mm=0.0, roll_deg=0.0, rack_mm=0.0) -> dict[str, dict[str, float | None]]:
@@ -27,9 +26,7 @@ def sweep(geometry, positions, keys=None) -> list[dict[str, dict[str, float | No
         for side in (("axle",) if info.scope_on(solid) == "axle" else ("left", "right"))
     ]
     requests = [Request(key, side, *map(float, position)) for position in positions for side, key in asked]
-    study = SimpleNamespace(**vars(NO_STUDY))
-    response = Response(geometry, study)
-    response._plan(requests)
+    response = Response(geometry).asking(requests=requests)
     values = response.evaluate(np.zeros((0, 1))).positions[:, 0]
     out = []
     for i in range(len(positions)):

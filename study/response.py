@@ -4,6 +4,7 @@
 in blocks of a fixed size, so the same errors give the same bits however they are cut into chunks of whole blocks.
 """
 
+from copy import copy
 from dataclasses import dataclass
 from types import SimpleNamespace
 
@@ -16,7 +17,7 @@ from study.kernel import solve as kernel
 from study.measures import KEYS, AxleView
 from study.stations import STEP, Hand, Spot
 
-BLOCK = 4096
+BLOCK = 10_240  # smaller ones keep threads waiting for each other's interpreter lock
 BEFORE_LEAVES_OUT = ("toe", "camber", "caster")
 NO_STUDY = SimpleNamespace(errors=(), alignment=None, sides="mirrored", jigs=(), measures=())
 
@@ -71,18 +72,29 @@ class Response:
     """The studied car as a function of its errors.
 
     stage "before" leaves toe, camber and caster as built; "after" sets them. `stepless`: steps of adjusters left out.
-    visits: measures whose positions a build has to reach without being measured there.
     """
 
-    def __init__(self, geometry, study=NO_STUDY, *, stage="after", stepless=False, visits=()):
+    def __init__(self, geometry, study=NO_STUDY, *, stage="after", stepless=False):
         self.geometry, self.study, self.stage, self.stepless = geometry, study, stage, stepless
         self.solid = geometry.linkage == "solid-axle"
         self.alike = self.solid or (study.sides == "mirrored" and geometry.right_is_mirror)
         corners = {hand: corner_of(geometry, hand) for hand in (("left",) if self.alike else HANDS)}
         self.model = build_model(corners, study)
         self.hands = {hand: self._hand(hand, corner) for hand, corner in corners.items()}
-        self.visits = [request for measure in visits for request in requests_of(measure)]
-        self._plan([request for measure in study.measures for request in requests_of(measure)])
+        self.starts = {hand: self._bench_start(found) for hand, found in self.hands.items() if found.bench.by}
+        self._ask(tuple(study.measures), [request for measure in study.measures for request in requests_of(measure)])
+
+    def asking(self, measures=None, *, requests=None, visits=(), stepless=None) -> "Response":
+        """The same car asked for other measures, or for bare requests (then `values` is empty); hands are shared.
+
+        visits: measures whose positions a build has to reach without being measured there. Raises PositionError.
+        """
+        other = copy(self)
+        other.stepless = self.stepless if stepless is None else stepless
+        measures = tuple(self.measures if measures is None and requests is None else measures or ())
+        wanted = [request for measure in measures for request in requests_of(measure)] if requests is None else requests
+        other._ask(measures, wanted, visits=[request for measure in visits for request in requests_of(measure)])
+        return other
 
     def _hand(self, hand, corner):
         study = self.study if self.stage == "after" else _unaligned(self.study)
@@ -93,28 +105,37 @@ class Response:
 
     # --- which views the requests need
 
-    def _plan(self, requests):
+    def _ask(self, measures, requests, visits=()):
         """Solve every station now, so that a position out of reach is an error before any work is done."""
-        self.requests = requests
+        self.measures, self.requests = measures, requests
         self.rates: dict[tuple[str, Spot], set[str]] = {}
-        self.starts = {hand: self._bench_start(found) for hand, found in self.hands.items() if found.bench.by}
+        for request in [*requests, *visits]:
+            self.rates |= {view[:2]: set() for view in self._views_of(request) if view[:2] not in self.rates}
         for request in requests:
-            info = KEYS[request.of]
             for hand in self._hands_of(request):
                 name, spot = self._spot(hand, request)
-                self.rates.setdefault((name, spot), set()).update(self.hands[name].rates_for(info))
-                self.hands[name].station(spot)
-                if "rest" in info.needs:
-                    self.rates.setdefault((name, spot.at_rest()), set())
-                    self.hands[name].station(spot.at_rest())
-                if "locked" in info.needs and spot.rack_mm:
-                    held = spot._replace(locked=True)
-                    self.rates.setdefault((name, held), set())
-                    self.hands[name].station(held)
-        for request in self.visits:
-            for hand in self._hands_of(request):
-                name, spot = self._spot(hand, request)
-                self.rates.setdefault((name, spot), set())
+                self.rates[name, spot].update(self.hands[name].rates_for(KEYS[request.of]))
+        for name, hand in self.hands.items():
+            hand.reach([spot for owner, spot in self.rates if owner == name])
+        self.steps = self._ordered(visits)
+
+    def _ordered(self, visits):
+        """(number of the request, None for a visit; request; views that nobody needs later), position by position."""
+        steps = [*enumerate(self.requests), *((None, request) for request in visits)]
+        steps.sort(key=lambda step: (step[1].bump_mm, abs(step[1].roll_deg), abs(step[1].rack_mm)))
+        last = {view: i for i, (_, request) in enumerate(steps) for view in self._views_of(request)}
+        return [(number, request, [v for v, at in last.items() if at == i]) for i, (number, request) in enumerate(steps)]
+
+    def _views_of(self, request):
+        """Keys (hand that is solved, spot, wheel where one body carries both) of the views that a request reads."""
+        needs, found = KEYS[request.of].needs, []
+        for hand in self._hands_of(request):
+            name, spot = self._spot(hand, request)
+            spots = [spot]
+            spots += [spot.at_rest()] if "rest" in needs else []
+            spots += [spot._replace(locked=True)] if "locked" in needs and spot.rack_mm else []
+            found += [(name, one, hand if self.solid else "") for one in spots]
+        return found
 
     def _scope(self, request):
         return KEYS[request.of].scope_on(self.solid)
@@ -143,19 +164,23 @@ class Response:
             status = np.zeros(n, np.uint8)
             for _, setting in set_up.values():
                 status = np.maximum(status, setting.status.astype(np.uint8))
-            shelf = _Shelf(self, {name: block for name, (block, _) in set_up.items()})
-            rows = np.array([shelf.value(request) for request in self.requests]).reshape(len(self.requests), n)
-            for request in self.visits:
-                shelf.visit(request)
-            status = np.where(shelf.status(n) > 0, shelf.status(n), status).astype(np.uint8)
+            shelf = _Shelf(self, {name: block for name, (block, _) in set_up.items()}, np.zeros(n, np.uint8))
+            rows = np.empty((len(self.requests), n))
+            for number, request, done in self.steps:
+                if number is None:
+                    shelf.visit(request)
+                else:
+                    rows[number] = shelf.value(request)
+                shelf.drop(done)
+            status = np.where(shelf.status > 0, shelf.status, status).astype(np.uint8)
             rows[:, status > 0] = np.nan
             values = self._take(rows, n)
         settings = np.concatenate([s.settings for _, s in set_up.values()])
         return values, rows, status, settings, np.concatenate([s.ran_out for _, s in set_up.values()])
 
     def _take(self, rows, n):
-        out, at = np.empty((len(self.study.measures), n)), 0
-        for i, measure in enumerate(self.study.measures):
+        out, at = np.empty((len(self.measures), n)), 0
+        for i, measure in enumerate(self.measures):
             count = max(len(measure.sweep), 1)
             out[i] = taken(measure, rows[at : at + count])
             at += count
@@ -189,10 +214,14 @@ class Response:
 
 
 class _Shelf:
-    """The views of one block, made when first asked for."""
+    """The views of one block, made when first asked for and dropped when done; status (N,): the worst of all their poses."""
 
-    def __init__(self, response, blocks):
-        self.response, self.blocks, self.views = response, blocks, {}
+    def __init__(self, response, blocks, status):
+        self.response, self.blocks, self.views, self.status = response, blocks, {}, status
+
+    def drop(self, keys):
+        for key in keys:
+            self.views.pop(key, None)
 
     def view(self, hand, request):
         name, spot = self.response._spot(hand, request)
@@ -211,6 +240,7 @@ class _Shelf:
         if key not in self.views:
             rates = tuple(sorted(self.response.rates[name, spot]))
             self.views[key] = self.response.hands[name].view(self.blocks[name], spot, rates=rates, wheel=hand)
+            self.status = np.maximum(self.status, self.views[key].pose.status.astype(np.uint8))
         return self.views[key]
 
     def visit(self, request):
@@ -231,12 +261,6 @@ class _Shelf:
             rack_mm=request.rack_mm,
         )
         return info.value(None, axle)
-
-    def status(self, n):
-        worst = np.zeros(n, np.uint8)
-        for view in self.views.values():
-            worst = np.maximum(worst, view.pose.status.astype(np.uint8))
-        return worst
 
 
 def _unaligned(study):

@@ -15,7 +15,7 @@ from study.alignment import Bench
 from study.assembly import Corner, assemble
 from study.build import HANDS, built_features
 from study.kernel import solve as kernel
-from study.kernel.rows import linearise, road_plane
+from study.kernel.rows import linearise, residuals, road_plane
 from study.kernel.twists import twists
 from study.measures import KEYS
 from study.measures.view import View, mirrored
@@ -86,22 +86,52 @@ class Hand:
     def station(self, spot: Spot) -> Station:
         """The station of a spot, solved at first asking. Raises PositionError."""
         if spot not in self._stations:
-            self._stations[spot] = self._solve_station(spot)
+            self.reach([spot])
         return self._stations[spot]
 
-    def _solve_station(self, spot):
-        if spot.rack_mm and not self.corner.has_rack:
-            raise PositionError(
-                f"rack {spot.rack_mm:g} mm: this {self.corner.linkage} has no steer link; ask for it at rack 0"
-            )
-        nominal = self.block(np.zeros((self.scalars, 1)), np.zeros((len(self.bench.by), 1)))
-        rows, road = self._rows_and_road(nominal, spot)
-        start = self._start_of(spot)
-        rotation, t, worst = kernel.solve_carefully(
-            rows.turned(start.rotation), road, rest=start.rest, count=1, least_steps=1
+    def reach(self, spots) -> None:
+        """Solve the stations of these spots, all that are not known yet side by side. Raises PositionError."""
+        new = [spot for spot in dict.fromkeys(spots) if spot not in self._stations]
+        for spot in new:
+            if spot.rack_mm and not self.corner.has_rack:
+                raise PositionError(
+                    f"rack {spot.rack_mm:g} mm: this {self.corner.linkage} has no steer link; ask for it at rack 0"
+                )
+        free = [spot for spot in new if not spot.locked]
+        if free:
+            self._stations |= {found.spot: found for found in self._solve_stations(free)}
+        for spot in new:
+            if spot.locked:
+                start = self.station(spot.at_rest())
+                block = self._nominal(1)
+                self._stations[spot] = self._solve_from(start, *self._rows_and_road(block, spot), [spot])[0]
+
+    def _nominal(self, count):
+        return self.block(np.zeros((self.scalars, count)), np.zeros((len(self.bench.by), count)))
+
+    def _solve_stations(self, spots):
+        """Stations of spots that are no held ones, each drawn from the design pose."""
+        block = self._nominal(len(spots))
+        bump, roll, rack = np.array([spot[:3] for spot in spots]).T
+        rows = block.rows.racked(rack) if rack.any() else block.rows
+        road = road_plane(roll_rad=np.radians(roll), ground_mm=self.corner.ground_mm, rise_mm=bump + block.rise)
+        design = self._stations.get(Spot(0.0, 0.0, 0.0))
+        start = design or Station(spots[0], np.eye(3), self.corner.origin[:, None], None, 0.0, np.zeros((6, 0)))
+        return self._solve_from(start, rows, road, spots)
+
+    def _solve_from(self, start, rows, road, spots):
+        """The nominal's homotopy from a start to every spot, a column each."""
+        rotations, t, worst = kernel.solve_carefully(
+            rows.turned(start.rotation), road, rest=start.rest, count=len(spots), least_steps=1
         )
-        self._judge(spot, worst[0])
-        rotation = rotation[:, :, 0] @ start.rotation
+        found = []
+        for i, spot in enumerate(spots):
+            self._judge(spot, worst[i])
+            rotation = rotations[:, :, i] @ start.rotation
+            found.append(self._station_at(spot, rows.take([i]), road.take([i]), rotation, t[:, [i]]))
+        return found
+
+    def _station_at(self, spot, rows, road, rotation, t):
         jacobian = np.empty((6, 6, 1))
         linearise(rows.turned(rotation), road, np.eye(3)[:, :, None], t, jacobian)
         order = kernel.pivot_order(jacobian[:, :, 0])
@@ -109,16 +139,7 @@ class Hand:
         self._judge_branch(spot, sign, jacobian[:, :, 0])
         q = self.scalars + len(self.bench.by)
         bare = Station(spot, rotation, t, order, sign, np.zeros((6, q)))
-        return bare._replace(effects=self._effects(bare)) if q else bare
-
-    def _start_of(self, spot):
-        """Where the nominal's homotopy starts: its design pose, or for a held suspension its pose with the rack at rest."""
-        if spot.locked:
-            return self.station(spot.at_rest())
-        design = self._stations.get(Spot(0.0, 0.0, 0.0))
-        if design is not None:
-            return design
-        return Station(spot, np.eye(3), self.corner.origin[:, None], None, 0.0, np.zeros((6, 0)))
+        return bare._replace(effects=self._effects(bare, jacobian[:, :, 0])) if q else bare
 
     def _where(self, spot):
         """The position as it was asked for: that of a right corner is mirrored."""
@@ -149,15 +170,18 @@ class Hand:
                 "gone over a dead point on the way there; ask for less travel"
             )
 
-    def _effects(self, bare: Station):
-        """Central differences of the pose over every scalar and setting: where iterations start, never a result."""
+    def _effects(self, bare: Station, jacobian):
+        """First-order effects of every scalar and setting on (t, Gibbs): where iterations start, never a result.
+
+        −J⁻¹ ∂F/∂e, with ∂F/∂e by central differences of the rows that stay open when the nominal pose is kept.
+        """
         q = bare.effects.shape[1]
         moves = np.concatenate((np.eye(q), -np.eye(q)), axis=1) * STEP
-        block = self.block(moves[: self.scalars], moves[self.scalars :])
-        pose, _ = self.poses(block, bare)
-        gibbs = _gibbs_of(pose.rotation)
-        spread = np.concatenate((pose.t, gibbs))
-        slope = (spread[:, :q] - spread[:, q:]) / (2.0 * STEP)
+        rows, road = self._rows_and_road(self.block(moves[: self.scalars], moves[self.scalars :]), bare.spot)
+        here = np.broadcast_to(np.eye(3)[:, :, None], (3, 3, 2 * q))
+        open_ = residuals(rows.turned(bare.rotation), road, here, np.broadcast_to(bare.rest, (3, 2 * q)))
+        slope = -np.linalg.solve(jacobian, (open_[:, :q] - open_[:, q:]) / (2.0 * STEP))
+        slope[3:] *= 0.5  # a Gibbs vector is half the turn
         return np.where(np.isfinite(slope), slope, 0.0)
 
     def _rows_and_road(self, block, spot):
@@ -227,10 +251,3 @@ def _of_wheel(points, suffix, rotation=None):
             name = name.removesuffix(suffix)
         out[name] = point if rotation is None else rotation @ point
     return out
-
-
-def _gibbs_of(rotation):
-    """Gibbs vectors (3, N) of rotation matrices (3, 3, N): axial part over (1 + trace)."""
-    r = rotation
-    axial = np.stack((r[2, 1] - r[1, 2], r[0, 2] - r[2, 0], r[1, 0] - r[0, 1]))
-    return axial / (1.0 + r[0, 0] + r[1, 1] + r[2, 2])

@@ -72,13 +72,15 @@ def nominal_rows(geometry, asked: Asked) -> list[dict]:
 def banded_rows(geometry, study, asked: Asked, *, stage: str, count: int) -> list[dict]:
     """Rows with the quantiles of `count` builds of a study at its last stage. Raises PositionError."""
     from study.bands import builds_along, curve_rows, swept
+    from study.response import Response
 
     solid, measures = geometry.linkage == "solid-axle", []
     for key in asked.keys:
         of_axle = KEYS[key].scope_on(solid) == "axle"
         for side in ("left",) if of_axle else asked.sides:
             measures.append(swept(key, side=side, over=asked.over.name, positions=asked.over.at, held=asked.held))
-    found = builds_along(geometry, study, measures, stage=stage, count=count)
+    car = Response(geometry, replace(study, measures=()), stage=stage).asking(measures)
+    found = builds_along(car, seed=study.seed, count=count)
     return curve_rows(measures, found.positions, stage=stage, solid=solid)
 
 

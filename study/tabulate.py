@@ -334,7 +334,11 @@ def _verdicts(work, outcomes, out, facts):
     if not tasks:
         return
     wanted, sources = work.study.wanted_share, work.model.sources
-    shares = {task.first: Share.of(outcomes[task.number].values[0] > 0) for task in tasks}
+    shares = {
+        task.first + i: Share.of(good)
+        for task in tasks
+        for i, good in enumerate((outcomes[task.number].values[0] > 0).reshape(task.count, -1))
+    }
     drawn = shares.pop(AS_DRAWN)
     found = {sources[n].name: verdict_of(share, wanted) for n, share in shares.items()}
     for row in out["ranking"]:

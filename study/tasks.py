@@ -2,7 +2,7 @@
 
 A task belongs to a stage and has a kind: "effects" (the batch of central differences about the drawing), "draws" (some
 blocks of the method's sample), "curves" (builds along bump, roll and rack), "worst" (the search for the worst build),
-"lots" (whole lots of cars, each lot built in the same jigs), "verdict" (one source alone in its next looser process).
+"lots" (whole lots of cars, each lot built in the same jigs), "verdict" (some sources, each alone in its next looser process).
 Its outcome is one array (rows, builds) and a status (builds,).
 """
 
@@ -16,13 +16,13 @@ from study.bands import builds_along
 from study.methods import METHODS, SAMPLED, linear, spread
 from study.methods.problem import Problem
 from study.position_words import position_text
-from study.response import Response, requests_of
+from study.response import BLOCK, Response, requests_of
 from study.smooth import Smooth
 from study.stations import PositionError, Spot
 from study.study_measures import Measure
-from study.verdicts import AS_DRAWN, VERDICT_BUILDS, field_with, good_flags, judged, looser
+from study.verdicts import AS_DRAWN, VERDICT_BUILDS, field_with, good_of_each, judged, looser
 
-BUILDS_PER_TASK = 4096
+BUILDS_PER_TASK = BLOCK
 CURVE_BUILDS = 256
 SMOOTH = ("sobol", "morris")  # methods that split variance: taken without the jumps of stepped adjusters
 LOTS, LOT_BUILDS = 256, 65_536  # as many lots as the builds allow, LOTS at the most and 16 at the least
@@ -41,7 +41,7 @@ class LimitError(InputError):
 
 @dataclass(frozen=True)
 class Task:
-    """One chunk of work. first, count: blocks of the sample (draws), else 0 and 1; builds: how many it will run."""
+    """One chunk of work. first, count: blocks of the sample (draws) or sources (verdict, from AS_DRAWN), else 0 and 1."""
 
     number: int
     stage: str
@@ -61,6 +61,13 @@ class Outcome:
 def stages_of(study) -> tuple[str, ...]:
     """The stages a study runs, the last being the one its answer is read at."""
     return ("before", "after") if study.alignment is not None else ("before",)
+
+
+def even_cuts(total: int, most: int) -> list[tuple[int, int]]:
+    """(first, count) of as few cuts of at most `most` as possible, as alike as possible: threads end together."""
+    parts = -(-total // most)
+    ends = [total * i // parts for i in range(parts + 1)]
+    return [(a, b - a) for a, b in zip(ends[:-1], ends[1:], strict=True)]
 
 
 class StudyWork:
@@ -111,7 +118,8 @@ class StudyWork:
                 cuts.append(("curves", 0, 1))
                 cuts += [("lots", 0, 1)] if self.lots else []
                 if judged(self.study):
-                    cuts += [("verdict", n, 1) for n in range(AS_DRAWN, len(self.model.sources))]
+                    each = even_cuts(1 + len(self.model.sources), BUILDS_PER_TASK // VERDICT_BUILDS)
+                    cuts += [("verdict", AS_DRAWN + first, count) for first, count in each]
             found += [(stage, *cut) for cut in cuts]
         return tuple(Task(i, *task) for i, task in enumerate(found))
 
@@ -127,8 +135,7 @@ class StudyWork:
     def _cuts(self):
         block = self.method.block(self.problem)
         blocks = self.method.builds(self.problem, self.study.size) // block
-        step = max(1, BUILDS_PER_TASK // block)
-        return [(first, min(step, blocks - first)) for first in range(0, blocks, step)]
+        return even_cuts(blocks, max(1, BUILDS_PER_TASK // block))
 
     def builds(self, task: Task) -> int:
         """How many builds a task runs (of a search: those it starts with, since it goes on until it has found)."""
@@ -139,7 +146,7 @@ class StudyWork:
         if task.kind == "lots":
             return self.lots * self.study.cars
         if task.kind == "verdict":
-            return VERDICT_BUILDS
+            return task.count * VERDICT_BUILDS
         return 1 + 2 * self.model.scalars
 
     def first_build(self, task: Task) -> int:
@@ -166,7 +173,7 @@ class StudyWork:
 
     @cached_property
     def _stepless(self):
-        return Response(self.geometry, self.study, stage="after", stepless=True)
+        return self.after.asking(stepless=True)
 
     @cached_property
     def smooth(self) -> Smooth:
@@ -206,14 +213,17 @@ class StudyWork:
         """The response of the limited measures alone: what good builds are told by."""
         limited = tuple(measure for measure in self.study.measures if measure.limits)
         others = tuple(measure for measure in self.study.measures if not measure.limits)
-        return Response(self.geometry, replace(self.study, measures=limited), stage=self.stages[-1], visits=others)
+        return self.after.asking(limited, visits=others)
 
     def _run_verdict(self, task):
-        """Flags of good builds (1, N) with one source loosened; AS_DRAWN: with none."""
-        source = None if task.first == AS_DRAWN else self.model.sources[task.first]
-        changed = {} if source is None else {task.first: looser(source, self.study.ladder)}
-        good, status = good_flags(self, field_with(self.model, changed))
-        return Outcome(good[None].astype(float), status)
+        """Flags of good builds (1, count × N), source by source loosened alone; AS_DRAWN: none."""
+        sources, ladder = self.model.sources, self.study.ladder
+        fields = [
+            field_with(self.model, {} if n == AS_DRAWN else {n: looser(sources[n], ladder)})
+            for n in range(task.first, task.first + task.count)
+        ]
+        good, status = good_of_each(self, fields)
+        return Outcome(good.reshape(1, -1).astype(float), status.ravel())
 
     def _run_worst(self, task):
         """Rows: per measure and direction the value, then the errors; last the builds run and those without a value."""
@@ -264,7 +274,7 @@ class StudyWork:
         return 0.0
 
     def _run_curves(self, task):
-        found = builds_along(self.geometry, self.study, self.curve_measures, stage=task.stage, count=CURVE_BUILDS)
+        found = builds_along(self.after.asking(self.curve_measures), seed=self.study.seed, count=CURVE_BUILDS)
         return Outcome(found.positions, found.status)
 
     @cached_property

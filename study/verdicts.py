@@ -59,16 +59,22 @@ def field_with(model, changed: dict[int, zones.Zone]) -> ZoneField:
 
 def good_flags(work, field: ZoneField, *, builds: int = VERDICT_BUILDS):
     """Which of the same independent draws (N,) are good when built in these zones, and their status (N,)."""
+    flags, status = good_of_each(work, [field], builds=builds)
+    return flags[0], status[0]
+
+
+def good_of_each(work, fields, *, builds: int = VERDICT_BUILDS):
+    """The same for several fields of zones (F), built side by side: flags and status, each (F, N)."""
     scalars = Problem(np.zeros(work.model.scalars, int), 1)
-    unit = spread.draw(scalars, size=builds, seed=work.study.seed + 3, first=0, count=builds)
-    found = work.judge.evaluate(field.to_errors(unit.T))
-    return is_good(found, work.judge.study), found.status
+    unit = spread.draw(scalars, size=builds, seed=work.study.seed + 3, first=0, count=builds).T
+    found = work.judge.evaluate(np.concatenate([field.to_errors(unit) for field in fields], axis=1))
+    return is_good(found, work.judge.measures).reshape(-1, builds), found.status.reshape(-1, builds)
 
 
-def is_good(values, study) -> np.ndarray:
+def is_good(values, measures) -> np.ndarray:
     """Flags (N,) of builds that assemble, align within reach and lie inside all limits."""
     good = (values.status == 0) & ~values.ran_out.any(axis=0)
-    for row, measure in zip(values.values, study.measures, strict=True):
+    for row, measure in zip(values.values, measures, strict=True):
         if measure.limits:
             good &= (row >= measure.limits[0]) & (row <= measure.limits[1])
     return good
