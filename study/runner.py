@@ -1,15 +1,14 @@
-"""Runs queued studies: claims one, does its tasks on threads, keeps each finished one, ends with the result tables.
+"""Runs queued studies: claims one, has its tasks done, keeps each finished one, ends with the result tables.
 
 The catalog is held only for the moment of a claim, a chunk or a result. Every task is a pure function of the study and
 its geometry, so a study that was interrupted goes on with the tasks that are not kept yet and ends with the same bits.
 """
 
 import contextlib
-import json
 import threading
 import time
 from collections.abc import Callable
-from concurrent.futures import FIRST_COMPLETED, ThreadPoolExecutor, wait
+from concurrent.futures import FIRST_COMPLETED, wait
 from dataclasses import dataclass, field
 from functools import partial
 from importlib.metadata import PackageNotFoundError, version
@@ -21,17 +20,19 @@ from threadpoolctl import threadpool_limits
 from catalog import processes, queue, revisions
 from catalog.chunks import load_chunk, store_chunk
 from catalog.errors import HoldtightError, InputError, WorkError
-from catalog.geometry import from_record, to_record
 from catalog.store import Catalog, CatalogBusy, CatalogFailed, CatalogGone, CatalogMissing, CatalogNotWritable
 from study.cluster import ClusterLost, ClusterPool
+from study.crew import LONG_POSES, Crew
 from study.dossier import kept_study
-from study.study_file import Study, parse_study, read_study
+from study.plain_work import from_plain, to_plain, work_of
+from study.study_file import Study, read_study
 from study.tabulate import tables
-from study.tasks import Outcome, StudyWork
+from study.tasks import Outcome
 
 HEARTBEAT_S = 10.0
 HELD_BYTES = 64 * 2**20
-KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the catalog has a price of its own
+KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the catalog has a price of its own,
+KEEP_TIMES = 4.0  # and so many times what the last write took
 
 
 class StudyFailed(WorkError):
@@ -92,7 +93,7 @@ def check(catalog: Catalog, study: Study, folder: Path, *, by: str) -> revisions
     """The revision that a study names; StudyDoesNotFit where the study asks of it what it does not have or cannot do."""
     revision, geometry = geometry_of(catalog, study, folder, by=by)
     try:
-        StudyWork(geometry, study)
+        work_of(geometry, study)
     except InputError as error:
         raise StudyDoesNotFit(f'study "{study.title}" on {revision.spec}: {error}') from None
     return revision
@@ -123,12 +124,12 @@ class Watch:
 
 
 def work(
-    catalog: Catalog, *, threads: int, watch: Watch, study_id: int | None = None, pool: ClusterPool | None = None
+    catalog: Catalog, *, crew: Crew, watch: Watch, study_id: int | None = None, pool: ClusterPool | None = None
 ) -> list[int]:
     """Run queued studies (or just one) until none is left. Gives the numbers of those that were finished.
 
-    A study that fails is marked so and the next one is taken; with `study_id` its error is raised. Tasks are done on
-    threads, or by the workers of a `pool`; when that is lost the study goes back into the queue. Raises ClusterLost.
+    A study that fails is marked so and the next one is taken; with `study_id` its error is raised. Tasks are done here
+    and by the `crew`, or by the workers of a `pool`; when that is lost the study goes back into the queue. Raises ClusterLost.
     """
     worker, finished = queue.worker_name(), []
     while not watch.stop.is_set():
@@ -137,7 +138,7 @@ def work(
         if job is None:
             break
         try:
-            if _Run(catalog, job, worker, threads=threads, watch=watch, pool=pool).run():
+            if _Run(catalog, job, worker, crew=crew, watch=watch, pool=pool).run():
                 finished.append(job.id)
         except Stopped:
             watch.stopped = True
@@ -164,37 +165,21 @@ def work(
     return finished
 
 
-def to_plain(geometry, study: Study) -> str:
-    """All that a study's tasks depend on, as JSON."""
-    geometry_parts = {"record": to_record(geometry), "text": geometry.text}
-    resolved = {name: dict(entry) for name, entry in study.resolved.items()}
-    return json.dumps({"geometry": geometry_parts, "study": study.text, "processes": resolved})
-
-
-def from_plain(plain: str) -> StudyWork:
-    """The work of a study from what to_plain gave."""
-    parts = json.loads(plain)
-    kept = {name: (entry["zone"], entry["looser"]) for name, entry in parts["processes"].items()}
-    book = processes.KeptBook(0, kept)
-    study = parse_study(parts["study"], source="study", processes=book, looser=book.looser)
-    return StudyWork(from_record(parts["geometry"]["record"], text=parts["geometry"]["text"]), study)
-
-
 class _Run:
     """One study, from its claim to its results."""
 
-    def __init__(self, catalog, job, worker, *, threads, watch, pool):
-        self.catalog, self.job, self.worker, self.threads, self.watch = catalog, job, worker, threads, watch
-        self.pool = pool
+    def __init__(self, catalog, job, worker, *, crew, watch, pool):
+        self.catalog, self.job, self.worker, self.watch = catalog, job, worker, watch
+        self.crew, self.pool = crew, pool
         self.started = time.monotonic()
-        self.last_sign = self.started
+        self.last_sign, self.write_s = self.started, 0.0
 
     def run(self) -> bool:
         """Do what is not kept yet and finish; False when the study was cancelled or taken over."""
         with self.catalog.read() as con:
             geometry = revisions.load(con, revisions.by_id(con, self.job.revision_id))
             self.study = kept_study(con, self.job)
-        self.work = StudyWork(geometry, self.study)
+        self.work = work_of(geometry, self.study)
         self.total = sum(self.work.builds(task) for task in self.work.tasks)
         outcomes = self._kept()
         self.done = sum(self.work.builds(task) for task in self.work.tasks if task.number in outcomes)
@@ -218,13 +203,13 @@ class _Run:
         return _from_arrays(task, arrays, status)
 
     def _do(self, tasks, outcomes):
-        """Tasks to threads or a pool, at most two a thread in flight; the main thread keeps what comes back, in any order."""
+        """Tasks to the crew or a pool, at most two a thread in flight; the main thread keeps what comes back, in any order."""
         waiting, running, fresh = list(reversed(tasks)), {}, []
-        with self._hands() as (submit, size):
+        with self._hands(tasks) as hands:
             while waiting or running or fresh:
-                while waiting and len(running) < 2 * size:
+                while waiting and len(running) < 2 * hands.size:
                     task = waiting.pop()
-                    running[submit(task)] = task
+                    running[hands.submit(task)] = task
                 ready = wait(running, timeout=0.1, return_when=FIRST_COMPLETED).done if running else ()
                 fresh += [(running.pop(future), *future.result()) for future in ready]
                 last = not (waiting or running)
@@ -233,17 +218,16 @@ class _Run:
         return True
 
     @contextlib.contextmanager
-    def _hands(self):
-        """(submit: task to future of (outcome, seconds), how many tasks are done at a time)."""
+    def _hands(self, tasks):
+        """Who does the tasks: `submit` makes a future of (outcome, seconds), `size` are done at a time."""
+        plain = partial(to_plain, self.work.geometry, self.study)
         if self.pool is not None:
-            with self.pool.of(from_plain, to_plain(self.work.geometry, self.study)) as hands:
-                yield hands.submit, hands.size
+            with self.pool.of(from_plain, plain()) as hands:
+                yield hands
             return
-        with threadpool_limits(1), ThreadPoolExecutor(self.threads) as pool:
-            try:
-                yield partial(pool.submit, self._timed), self.threads
-            finally:
-                pool.shutdown(wait=False, cancel_futures=True)
+        poses = sum(self.work.builds(task) for task in tasks) * len(self.work.after.rates)
+        with threadpool_limits(1), self.crew.of(self._timed, plain, long=poses >= LONG_POSES) as hands:
+            yield hands
 
     def _timed(self, task):
         start = time.monotonic()
@@ -252,7 +236,8 @@ class _Run:
     def _go_on(self, fresh, outcomes, *, last) -> bool:
         """Keep what is fresh, a second's worth at a time, and stop where asked to; False when the study is not ours any more."""
         stop = self.watch.stop.is_set()
-        late = time.monotonic() - self.last_sign > (KEEP_S if fresh else HEARTBEAT_S)
+        patience = min(max(KEEP_S, KEEP_TIMES * self.write_s), HEARTBEAT_S) if fresh else HEARTBEAT_S
+        late = time.monotonic() - self.last_sign > patience
         if (stop or last or late) and not (self._keep(fresh) if fresh else self._alive()):
             return False
         if stop or last or late:
@@ -269,9 +254,12 @@ class _Run:
 
     def _keep(self, fresh) -> bool:
         """Finished tasks into the catalog, in one transaction."""
-        self.last_sign = time.monotonic()
+        begun = time.monotonic()
         with self.catalog.write() as con:
-            return all(self._store(con, *one) for one in fresh)
+            ours = all(self._store(con, *one) for one in fresh)
+        self.last_sign = time.monotonic()
+        self.write_s = self.last_sign - begun
+        return ours
 
     def _store(self, con, task, outcome, seconds):
         values, more = _to_arrays(task, outcome, len(self.study.measures))

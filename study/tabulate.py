@@ -10,7 +10,7 @@ from study.measures import KEYS
 from study.methods import spread
 from study.position_words import position_text
 from study.tasks import StudyWork
-from study.verdicts import AS_DRAWN, HOLD, Share, looser, open_together, verdict_of
+from study.verdicts import AS_DRAWN, HOLD, VERDICT_BUILDS, Share, looser, open_together, verdict_of
 from study.zone_words import zone_text
 
 QUANTILES = {
@@ -41,7 +41,7 @@ def tables(work: StudyWork, outcomes: dict) -> tuple[dict[str, list[dict]], dict
     _verdicts(work, outcomes, out, facts)
     curves = next(task for task in work.tasks if task.kind == "curves")
     out["curves"] = _curves(work, curves, outcomes[curves.number])
-    facts["builds"] += sum(work.builds(task) for task in work.tasks if task.kind != "worst")
+    facts["builds"] += sum(work.builds(task) for task in work.tasks if task.kind not in ("worst", "verdict"))
     facts["perfect"] = list(work.model.perfect)
     return out, facts
 
@@ -334,11 +334,9 @@ def _verdicts(work, outcomes, out, facts):
     if not tasks:
         return
     wanted, sources = work.study.wanted_share, work.model.sources
-    shares = {
-        task.first + i: Share.of(good)
-        for task in tasks
-        for i, good in enumerate((outcomes[task.number].values[0] > 0).reshape(task.count, -1))
-    }
+    flags = np.concatenate([outcomes[task.number].values[0] for task in tasks]).reshape(-1, VERDICT_BUILDS)
+    facts["builds"] += int(np.isfinite(flags).sum())
+    shares = {AS_DRAWN + i: Share.of(row[np.isfinite(row)]) for i, row in enumerate(flags)}
     drawn = shares.pop(AS_DRAWN)
     found = {sources[n].name: verdict_of(share, wanted) for n, share in shares.items()}
     for row in out["ranking"]:

@@ -20,7 +20,7 @@ from study.response import BLOCK, Response, requests_of
 from study.smooth import Smooth
 from study.stations import PositionError, Spot
 from study.study_measures import Measure
-from study.verdicts import AS_DRAWN, VERDICT_BUILDS, field_with, good_of_each, judged, looser
+from study.verdicts import AS_DRAWN, VERDICT_BUILDS, flags_alone, judged
 
 BUILDS_PER_TASK = BLOCK
 CURVE_BUILDS = 256
@@ -118,7 +118,7 @@ class StudyWork:
                 cuts.append(("curves", 0, 1))
                 cuts += [("lots", 0, 1)] if self.lots else []
                 if judged(self.study):
-                    each = even_cuts(1 + len(self.model.sources), BUILDS_PER_TASK // VERDICT_BUILDS)
+                    each = even_cuts(1 + len(self.model.sources), max(1, BUILDS_PER_TASK // VERDICT_BUILDS))
                     cuts += [("verdict", AS_DRAWN + first, count) for first, count in each]
             found += [(stage, *cut) for cut in cuts]
         return tuple(Task(i, *task) for i, task in enumerate(found))
@@ -138,7 +138,7 @@ class StudyWork:
         return even_cuts(blocks, max(1, BUILDS_PER_TASK // block))
 
     def builds(self, task: Task) -> int:
-        """How many builds a task runs (of a search: those it starts with, since it goes on until it has found)."""
+        """How many builds a task runs: of a search those it starts with, of a verdict those that it may need."""
         if task.kind == "draws":
             return task.count * self.method.block(self.problem)
         if task.kind == "curves":
@@ -216,14 +216,9 @@ class StudyWork:
         return self.after.asking(limited, visits=others)
 
     def _run_verdict(self, task):
-        """Flags of good builds (1, count × N), source by source loosened alone; AS_DRAWN: none."""
-        sources, ladder = self.model.sources, self.study.ladder
-        fields = [
-            field_with(self.model, {} if n == AS_DRAWN else {n: looser(sources[n], ladder)})
-            for n in range(task.first, task.first + task.count)
-        ]
-        good, status = good_of_each(self, fields)
-        return Outcome(good.reshape(1, -1).astype(float), status.ravel())
+        """Flags of good builds (1, count × N), source by source loosened alone; NaN where none was needed."""
+        flags, status = flags_alone(self, range(task.first, task.first + task.count))
+        return Outcome(flags.reshape(1, -1), status.ravel())
 
     def _run_worst(self, task):
         """Rows: per measure and direction the value, then the errors; last the builds run and those without a value."""

@@ -3,6 +3,9 @@
 A verdict is a counterfactual: the same draws are built again with one source in its next looser process (without
 processes, in twice its zone). `hold`: the share of good builds falls below the wanted one; `open`: it stays above;
 `watch`: its interval straddles it. A set is proposed only if it passes together.
+
+Where the first builds leave no doubt no more are made: a look after FIRST_LOOK builds ends a verdict only by its 99.9 %
+interval, so that the last look keeps its own level (the rule of J. L. Haybittle 1971 and R. Peto et al. 1976).
 """
 
 from dataclasses import dataclass, replace
@@ -14,23 +17,24 @@ from study.methods import spread
 from study.methods.problem import Problem
 from study.zone_field import ZoneField
 
-VERDICT_BUILDS = 2048
+VERDICT_BUILDS, FIRST_LOOK = 2048, 512
+BEYOND_DOUBT = 0.999
 HOLD, WATCH, OPEN = "hold", "watch", "open"
 AS_DRAWN = -1
 
 
 @dataclass(frozen=True)
 class Share:
-    """A share of good builds with its 95 % Clopper–Pearson interval."""
+    """A share of good builds with its Clopper–Pearson interval, 95 % unless said."""
 
     share: float
     low: float
     high: float
 
     @classmethod
-    def of(cls, good) -> "Share":
+    def of(cls, good, *, confidence: float = 0.95) -> "Share":
         """From flags (N,)."""
-        low, high = spread.clopper_pearson(int(good.sum()), len(good))
+        low, high = spread.clopper_pearson(int(good.sum()), len(good), confidence=confidence)
         return cls(float(good.mean()), low, high)
 
 
@@ -59,16 +63,36 @@ def field_with(model, changed: dict[int, zones.Zone]) -> ZoneField:
 
 def good_flags(work, field: ZoneField, *, builds: int = VERDICT_BUILDS):
     """Which of the same independent draws (N,) are good when built in these zones, and their status (N,)."""
-    flags, status = good_of_each(work, [field], builds=builds)
+    flags, status = _built(work, [field], first=0, count=builds)
     return flags[0], status[0]
 
 
-def good_of_each(work, fields, *, builds: int = VERDICT_BUILDS):
-    """The same for several fields of zones (F), built side by side: flags and status, each (F, N)."""
+def flags_alone(work, numbers):
+    """Flags and status, each (F, VERDICT_BUILDS), with one source loosened a row; AS_DRAWN: none.
+
+    Flags are 1 or 0, and NaN where builds were not made because the first ones had decided.
+    """
+    sources, ladder = work.model.sources, work.study.ladder
+    fields = [field_with(work.model, {} if n == AS_DRAWN else {n: looser(sources[n], ladder)}) for n in numbers]
+    flags, status = np.full((len(fields), VERDICT_BUILDS), np.nan), np.zeros((len(fields), VERDICT_BUILDS), np.uint8)
+    flags[:, :FIRST_LOOK], status[:, :FIRST_LOOK] = _built(work, fields, first=0, count=FIRST_LOOK)
+    open_ = [i for i, n in enumerate(numbers) if n == AS_DRAWN or not _beyond_doubt(flags[i, :FIRST_LOOK], work)]
+    if open_:
+        rest = _built(work, [fields[i] for i in open_], first=FIRST_LOOK, count=VERDICT_BUILDS - FIRST_LOOK)
+        flags[open_, FIRST_LOOK:], status[open_, FIRST_LOOK:] = rest
+    return flags, status
+
+
+def _beyond_doubt(good, work):
+    return verdict_of(Share.of(good, confidence=BEYOND_DOUBT), work.study.wanted_share) != WATCH
+
+
+def _built(work, fields, *, first, count):
+    """Flags and status, each (F, count), of the same draws built in several fields of zones, side by side."""
     scalars = Problem(np.zeros(work.model.scalars, int), 1)
-    unit = spread.draw(scalars, size=builds, seed=work.study.seed + 3, first=0, count=builds).T
+    unit = spread.draw(scalars, size=first + count, seed=work.study.seed + 3, first=first, count=count).T
     found = work.judge.evaluate(np.concatenate([field.to_errors(unit) for field in fields], axis=1))
-    return is_good(found, work.judge.measures).reshape(-1, builds), found.status.reshape(-1, builds)
+    return is_good(found, work.judge.measures).reshape(-1, count), found.status.reshape(-1, count)
 
 
 def is_good(values, measures) -> np.ndarray:
@@ -91,13 +115,22 @@ def open_together(work, alone: dict[int, Share]) -> tuple[list[int], Share | Non
     builds = 0
     while chosen:
         changed = {n: looser(work.model.sources[n], work.study.ladder) for n in chosen}
-        good, _ = good_flags(work, field_with(work.model, changed))
+        good = _flags_unless_held(work, field_with(work.model, changed))
         builds += len(good)
         share = Share.of(good)
-        if verdict_of(share, wanted) == OPEN:
+        if len(good) == VERDICT_BUILDS and verdict_of(share, wanted) == OPEN:
             return sorted(chosen), share, builds
         chosen = chosen[1:]
     return [], None, builds
+
+
+def _flags_unless_held(work, field):
+    """Flags of all builds, or of the first alone where they hold beyond doubt."""
+    first, _ = good_flags(work, field, builds=FIRST_LOOK)
+    if verdict_of(Share.of(first, confidence=BEYOND_DOUBT), work.study.wanted_share) == HOLD:
+        return first
+    rest, _ = _built(work, [field], first=FIRST_LOOK, count=VERDICT_BUILDS - FIRST_LOOK)
+    return np.concatenate((first, rest[0]))
 
 
 def _is_band(work, number):

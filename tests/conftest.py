@@ -1,5 +1,6 @@
 """Settings shared by all tests: the same random cases on every run, and no time limit per case."""
 
+import sys
 import tomllib
 from pathlib import Path
 
@@ -24,3 +25,12 @@ REFERENCES = Path(__file__).parent / "references"
 def kinematics() -> dict:
     """Outside values of `references/kinematics.toml`."""
     return tomllib.loads((REFERENCES / "kinematics.toml").read_text(encoding="utf-8"))
+
+
+@pytest.fixture(autouse=True)
+def fresh_work():
+    """No study made ready under one test's settings serves another."""
+    yield
+    made = sys.modules.get("study.plain_work")
+    if made is not None:
+        made.from_plain.cache_clear()

@@ -12,7 +12,7 @@ ROOT = Path(__file__).parents[1]
 SUITE = sorted(path for top in ("catalog", "study") for path in (ROOT / top).rglob("*.py"))
 OWN = ("catalog", "study")
 HEAVY = ("numpy", "scipy", "duckdb", "SALib", "altair", "pandas", "pydantic", "matplotlib", "vl_convert")
-READS_CATALOG = ("study.commands.*", "study.runner", "study.sheet*", "study.dossier")
+READS_CATALOG = ("study.commands.*", "study.runner", "study.plain_work", "study.sheet*", "study.dossier")
 ERRORS = "catalog.errors"
 TOML_TEXT = "catalog.toml_text"  # reads hostile text safely; knows nothing of the catalog
 

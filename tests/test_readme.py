@@ -18,6 +18,7 @@ from catalog.store import Catalog
 from study.alignment import adjusters_of
 from study.assembly import corner_of
 from study.commands import COMMANDS, app
+from study.crew import Crew
 from study.measures import KEYS
 from study.methods import METHODS
 from study.runner import Watch, enqueue, work
@@ -169,7 +170,7 @@ def catalog(tmp_path_factory):
     steer = 'name = "bump steer"\nof = "bump_steer_deg_per_mm"\nlimits = [-0.001, 0.001]'
     asked = small_study(steer, "caster_deg", method="sobol", size=16, alignment=TOE)
     enqueue(store, asked, folder, by="test")
-    assert work(store, threads=1, watch=Watch()) == [1]
+    assert work(store, crew=Crew(0), watch=Watch()) == [1]
     return store
 
 

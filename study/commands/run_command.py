@@ -10,7 +10,7 @@ from study.commands.common import WORKER_WAIT_S, CatalogOption, JsonOption, by_w
 
 def run(
     study: Annotated[Path, typer.Argument(help="A study file.")],
-    threads: Annotated[int, typer.Option(help="Threads; 0 takes one a core.", min=0, max=256)] = 0,
+    threads: Annotated[int, typer.Option(help="How many tasks at a time; 0 takes one a core.", min=0, max=256)] = 0,
     sheet: Annotated[
         Path | None, typer.Option(help="The sheet's file; else sheets/study-N.html.", show_default=False)
     ] = None,
@@ -19,21 +19,25 @@ def run(
     catalog: CatalogOption = None,
 ) -> None:
     """Add the geometry, queue and work the study, print the ranking, write the sheet."""
-    from catalog.store import Catalog
-    from study.commands.ranking_tables import print_ranking
-    from study.commands.work_command import progress_watch, stop_on_signals
-    from study.runner import enqueue, read_asked, work
-    from study.sheet_library import prepare
+    from study.crew import Crew, long_study
 
-    prepare()
-    store = Catalog(catalog, wait_s=WORKER_WAIT_S)
-    asked = read_asked(store, study)
-    number = enqueue(store, asked, study.parent, by=by_whom(by))
-    with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
-        finished = work(store, threads=threads or default_threads(), watch=watch, study_id=number)
+    with Crew((threads or default_threads()) - 1) as crew:
+        if long_study(study):
+            crew.start()  # helpers get ready while this process does
+        from catalog.store import Catalog
+        from study.commands.work_command import progress_watch, stop_on_signals
+        from study.runner import enqueue, read_asked, work
+        from study.sheet_library import prepare
+
+        prepare()
+        store = Catalog(catalog, wait_s=WORKER_WAIT_S)
+        number = enqueue(store, read_asked(store, study), study.parent, by=by_whom(by))
+        with progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
+            finished = work(store, crew=crew, watch=watch, study_id=number)
     if number not in finished:
         print(f"study {number} was stopped; what is finished is kept, `holdtight work` goes on with it")
         raise typer.Exit(1)
+    from study.commands.ranking_tables import print_ranking
     from study.dossier import load_dossier
     from study.handout import write_sheet
 

@@ -11,7 +11,7 @@ from study.commands.common import WORKER_WAIT_S, CatalogOption, JsonOption, clea
 
 
 def run(
-    threads: Annotated[int, typer.Option(help="Threads; 0 takes one a core.", min=0, max=256)] = 0,
+    threads: Annotated[int, typer.Option(help="How many tasks at a time; 0 takes one a core.", min=0, max=256)] = 0,
     cluster: Annotated[
         str | None,
         typer.Option(metavar="ADDRESS", help="A Dask scheduler, HOST:PORT, whose workers do the tasks.", show_default=False),
@@ -21,10 +21,11 @@ def run(
 ) -> None:
     """Run the queued studies, one after the other, until none is left. Ctrl-C stops after the tasks in hand."""
     from catalog.store import Catalog
+    from study.crew import Crew
     from study.runner import work
 
-    with pool_at(cluster) as pool, progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
-        finished = work(Catalog(catalog, wait_s=WORKER_WAIT_S), threads=threads or default_threads(), watch=watch, pool=pool)
+    with Crew((threads or default_threads()) - 1) as crew, pool_at(cluster) as pool, progress_watch(quiet=as_json) as watch, stop_on_signals(watch):
+        finished = work(Catalog(catalog, wait_s=WORKER_WAIT_S), crew=crew, watch=watch, pool=pool)
     if watch.stop.is_set() and watch.stopped:
         print("stopped; what is finished is kept, `holdtight work` goes on with it")
         raise typer.Exit(1)

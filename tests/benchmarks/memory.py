@@ -8,6 +8,7 @@ import time
 from pathlib import Path
 
 from catalog.store import Catalog
+from study.crew import Crew
 from study.runner import Watch, enqueue, work
 from study.study_file import parse_study
 
@@ -22,7 +23,7 @@ def main(builds: int) -> None:
         store = Catalog(f"{folder}/c.duckdb")
         start = time.perf_counter()
         number = enqueue(store, parse_study(text, source="memory"), STUDY.parent, by="benchmark")
-        assert work(store, threads=2, watch=Watch(), study_id=number) == [number]
+        assert work(store, crew=Crew(1), watch=Watch(), study_id=number) == [number]
         print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss // 1024, round(time.perf_counter() - start, 1))
 
 

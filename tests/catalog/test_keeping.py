@@ -11,6 +11,7 @@ from catalog import keeping
 from catalog.errors import HoldtightError
 from catalog.keeping import backup, check
 from catalog.store import Catalog, CatalogFailed, CatalogForeign, CatalogGone
+from study.crew import Crew
 from study.runner import Watch, enqueue, work
 from tests.hard.disk import deleted_while_working, full_at_the_start
 from tests.hard.kill import end_politely, kill
@@ -28,7 +29,7 @@ def finished(tmp_path_factory):
     store = Catalog(tmp_path_factory.mktemp("shop") / "shop.duckdb")
     for method, size in SIZES.items():
         enqueue(store, small_study("camber_deg", method=method, size=size, alignment=TOE), DEMO.parent, by="test")
-    assert work(store, threads=1, watch=Watch()) == [1, 2, 3, 4, 5]
+    assert work(store, crew=Crew(0), watch=Watch()) == [1, 2, 3, 4, 5]
     return store
 
 

@@ -9,6 +9,7 @@ import signal
 import sys
 import threading
 import time
+from pathlib import Path
 
 from tests.hard.shop import Shop, in_a_shop
 
@@ -46,7 +47,7 @@ class Others(threading.Thread):
 def kill(shop: Shop, *, times: int, size: int, seed: int, pairs: bool = True) -> None:
     """Kill workers `times` times, two at once every third time; then let one finish and compare."""
     chance, first = random.Random(seed), untouched(shop, size=size)
-    numbers, kills, grown, twice = [], 0, 0, 0
+    numbers, kills, grown, twice, helped = [], 0, 0, 0, 0
     others = Others(shop)
     others.start()
     current = None
@@ -55,10 +56,11 @@ def kill(shop: Shop, *, times: int, size: int, seed: int, pairs: bool = True) ->
             current = shop.ask(shop.study(size=size))
             numbers.append(current)
         before = shop.chunks(current)
-        crew = [shop.start("work", "--threads", "2", pause=0.05) for _ in range(1 + (pairs and kills % 3 == 2))]
-        twice += len(crew) - 1
+        helpers = kills % 4 == 3
+        workers = [shop.start("work", "--threads", "2", pause=0.05, helpers=helpers) for _ in range(1 + (pairs and kills % 3 == 2))]
+        twice, helped = twice + len(workers) - 1, helped + helpers
         _let_run(shop, current, len(before), kills % 3, chance)
-        for process in crew:
+        for process in workers:
             alive = process.poll() is None
             process.send_signal(signal.SIGKILL)
             process.communicate()
@@ -72,7 +74,28 @@ def kill(shop: Shop, *, times: int, size: int, seed: int, pairs: bool = True) ->
     code, out, err = shop.do("work", "--threads", "2")
     shop.expect("a dead worker's study is taken over", code == 0 and shop.job(current).state == "done", out + err)
     _compare(shop, first, numbers)
-    print(f"{kills} kills ({twice} rounds with two workers, {grown} rounds got chunks in), {len(numbers)} studies")
+    shop.expect("no helper outlives its worker", not _helpers_left(), _helpers_left())
+    print(
+        f"{kills} kills ({twice} rounds with two workers, {helped} with helper processes, {grown} rounds got chunks in), "
+        f"{len(numbers)} studies"
+    )
+
+
+def _helpers_left(*, seconds=10.0) -> list[str]:
+    """Numbers of helper processes that still run after a while, where the system lists processes in /proc."""
+    end = time.monotonic() + seconds
+    while found := [p.parent.name for p in Path("/proc").glob("[0-9]*/cmdline") if b"study.crew" in _read(p)]:
+        if time.monotonic() > end:
+            break
+        time.sleep(0.2)
+    return found
+
+
+def _read(path: Path) -> bytes:
+    try:
+        return path.read_bytes()
+    except OSError:  # it has ended meanwhile
+        return b""
 
 
 def _let_run(shop: Shop, number: int, kept: int, mode: int, chance) -> None:
@@ -101,7 +124,7 @@ def end_politely(shop: Shop, *, times: int, seed: int) -> None:
     chance, longest = random.Random(seed), 0.0
     for turn in range(times):
         number = shop.ask(shop.study("long", size=2048, seed=turn))
-        process = shop.start("work", "--threads", "2")
+        process = shop.start("work", "--threads", "2", helpers=turn % 2 == 0)
         while shop.job(number).state != "running":
             time.sleep(0.1)
         time.sleep(chance.uniform(0.0, 1.5))

@@ -17,14 +17,17 @@ from catalog.keeping import check
 from catalog.store import Catalog
 from tests.study.small_studies import DEMO, TOE, study_text
 
-SMALL = {"BUILDS_PER_TASK": 256, "CURVE_BUILDS": 8, "CURVE_KEYS": {"bump": ("camber_deg",)}}
+SMALL = {"BUILDS_PER_TASK": 256}  # what changes a task's own numbers would have to be changed in helpers too
 # a process that has imported everything starts the others, so that their time goes into the work
 _START = multiprocessing.get_context("forkserver" if hasattr(os, "fork") else "spawn")
 _START.set_forkserver_preload(["tests.hard.shop", "study.runner", "study.commands.queue_command", "scipy.stats", "SALib.sample.sobol"])
 
 
-def _command(words, folder, environment, pause, said, prepare):
-    """Be `holdtight WORDS`: small tasks, each kept at once and `pause` seconds longer than it need be."""
+def _command(words, folder, environment, pause, said, prepare, helpers):
+    """Be `holdtight WORDS`: small tasks, each kept at once and `pause` seconds longer than it need be.
+
+    helpers: even the shortest study gets helper processes.
+    """
     for number, name in ((1, "out"), (2, "err")):
         os.dup2(os.open(f"{said}.{name}", os.O_WRONLY | os.O_CREAT | os.O_TRUNC, 0o666), number)
     os.environ.update(environment)
@@ -32,7 +35,9 @@ def _command(words, folder, environment, pause, said, prepare):
     from study import runner, tasks
     from study.commands import main
 
-    runner.KEEP_S = 0.0
+    runner.KEEP_S = runner.KEEP_TIMES = 0.0
+    if helpers:
+        runner.LONG_POSES = 0
     vars(tasks).update(SMALL)
     done = tasks.StudyWork.run
     tasks.StudyWork.run = lambda self, task: (time.sleep(pause), done(self, task))[1]
@@ -45,7 +50,7 @@ def _command(words, folder, environment, pause, said, prepare):
 class Command:
     """A running `holdtight` command; signals and waiting as of a subprocess."""
 
-    def __init__(self, words, folder: Path, said: Path, *, pause=0.0, prepare=None, catalog: Path):
+    def __init__(self, words, folder: Path, said: Path, *, pause=0.0, prepare=None, helpers=False, catalog: Path):
         self.said = said
         environment = {"HOLDTIGHT_CATALOG": str(catalog)}
         asked = ([str(word) for word in words], str(folder), environment, pause, str(said), prepare)
@@ -97,7 +102,7 @@ class Shop:
         return path
 
     def start(self, *words, catalog: Path | None = None, **options) -> Command:
-        """`holdtight WORDS` on this catalog; options: pause (s) in every task, prepare: called before the command."""
+        """`holdtight WORDS` on this catalog; options: pause (s) in every task, prepare: called before the command, helpers."""
         said = self.folder / f".said-{next(self._numbers)}"
         return Command(words, self.folder, said, catalog=catalog or self.store.path, **options)
 

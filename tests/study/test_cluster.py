@@ -13,7 +13,9 @@ import pytest
 from catalog import processes, queue
 from catalog.store import Catalog
 from study import runner, tasks
-from study.runner import Watch, enqueue, from_plain, to_plain, work
+from study.crew import Crew
+from study.plain_work import from_plain, to_plain
+from study.runner import Watch, enqueue, work
 from study.study_file import parse_study
 from tests.study.command_line import command
 from tests.study.small_studies import DEMO, ROOT, TOE, demo, small_study, study_text
@@ -117,7 +119,7 @@ def test_a_worker_killed_half_way_changes_no_bit(catalog, workers, scheduler):
     from study.cluster import connected
 
     first, second = ask(catalog), ask(catalog)
-    work(catalog, threads=1, watch=Watch(), study_id=first)
+    work(catalog, crew=Crew(0), watch=Watch(), study_id=first)
     killed = threading.Event()
 
     def progress(job, done, total):
@@ -126,7 +128,7 @@ def test_a_worker_killed_half_way_changes_no_bit(catalog, workers, scheduler):
             killed.set()
 
     with connected(scheduler) as pool:
-        assert work(catalog, threads=1, watch=Watch(progress=progress), study_id=second, pool=pool) == [second]
+        assert work(catalog, crew=Crew(0), watch=Watch(progress=progress), study_id=second, pool=pool) == [second]
     one, two = job(catalog, first), job(catalog, second)
     assert killed.is_set() and workers[0].wait(10) == -signal.SIGKILL and workers[1].poll() is None
     assert one.result_hash and one.result_hash == two.result_hash
@@ -177,5 +179,5 @@ def test_a_scheduler_that_is_lost_gives_the_study_back(catalog, start):
     start_worker(start, f"127.0.0.1:{port}")
     watch = Watch(progress=lambda job, done, total: boss.kill() if done else None)
     with pytest.raises(ClusterLost, match="lost"), connected(f"127.0.0.1:{port}") as pool:
-        work(catalog, threads=1, watch=watch, pool=pool)
+        work(catalog, crew=Crew(0), watch=watch, pool=pool)
     assert job(catalog, number).state == "queued" and job(catalog, number).done > 0

@@ -8,6 +8,7 @@ from typer.testing import CliRunner
 from catalog.errors import HoldtightError
 from catalog.store import Catalog
 from study.commands import app
+from study.crew import Crew
 from study.runner import Watch, enqueue, read_asked, work
 from tests.study.small_studies import DEMO
 
@@ -47,7 +48,7 @@ def shop(tmp_path_factory):
     (folder / "study.toml").write_text(TEXT, encoding="utf-8")
     store = Catalog(folder / "shop.duckdb")
     enqueue(store, read_asked(store, folder / "study.toml"), folder, by="test")
-    assert work(store, threads=1, watch=Watch()) == [1]
+    assert work(store, crew=Crew(0), watch=Watch()) == [1]
     return store.path, other
 
 

@@ -8,6 +8,7 @@ from catalog import processes, queue
 from catalog.results import load_results
 from catalog.store import Catalog
 from study import tasks
+from study.crew import Crew
 from study.dossier import kept_study
 from study.runner import Watch, enqueue, read_asked, work
 from study.study_file import StudyFileError
@@ -103,7 +104,7 @@ def test_jigs_may_name_processes_too(shop):
 
 
 def run_one(store, number):
-    assert work(store, threads=1, watch=Watch(), study_id=number) == [number]
+    assert work(store, crew=Crew(0), watch=Watch(), study_id=number) == [number]
     with store.read() as con:
         return queue.get(con, number), load_results(con, number)
 

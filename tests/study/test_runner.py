@@ -12,6 +12,7 @@ from catalog import queue, results, revisions
 from catalog.errors import HoldtightError
 from catalog.store import Catalog
 from study import runner, tasks
+from study.crew import Crew
 from study.runner import Watch, enqueue, register, work
 from study.tasks import StudyWork
 from tests.study.small_studies import DEMO, ROOT, TOE, demo, run_study, small_study, study_text
@@ -81,8 +82,8 @@ def tables_of(catalog, number):
         return results.load_results(con, number)
 
 
-def run_all(catalog, *, threads=1):
-    return work(catalog, threads=threads, watch=Watch())
+def run_all(catalog, *, crew=None):
+    return work(catalog, crew=crew or Crew(0), watch=Watch())
 
 
 def wait_for(condition, *, process, seconds=180.0):
@@ -116,8 +117,8 @@ def same_numbers(mine, theirs):
 def test_one_thread_and_two_give_the_same_bits(catalog, method):
     sizes = {"sobol": 64, "spread": 600}
     numbers = [ask(catalog, method=method, size=sizes[method], alignment=TOE) for _ in range(2)]
-    for number, threads in zip(numbers, (1, 2), strict=True):
-        work(catalog, threads=threads, watch=Watch(), study_id=number)
+    for number, helpers in zip(numbers, (0, 1), strict=True):
+        work(catalog, crew=Crew(helpers), watch=Watch(), study_id=number)
     one, two = (job(catalog, number) for number in numbers)
     assert one.state == two.state == "done"
     assert one.result_hash and one.result_hash == two.result_hash
@@ -144,7 +145,7 @@ def test_seed_0_is_a_seed_like_any_other(method):
 
 def test_seed_0_is_kept_and_builds_really_run_are_counted(catalog, keep_at_once):
     number, seen = ask(catalog, method="spread", size=700, seed=0, alignment=TOE), []
-    work(catalog, threads=2, watch=Watch(progress=lambda job, done, total: seen.append((done, total))))
+    work(catalog, crew=Crew(1), watch=Watch(progress=lambda job, done, total: seen.append((done, total))))
     effects, curves = 1 + 2 * 13, 1 + SMALL["CURVE_BUILDS"]  # four points of three scalars and one band
     builds = 2 * (700 + effects) + curves
     assert tables_of(catalog, number)["study"][0]["builds"] == builds
@@ -165,7 +166,7 @@ def test_a_study_killed_twice_ends_with_the_bits_of_one_that_was_not(catalog, wo
         left = job(catalog, number)
         assert left.state == state and 0 < left.done < left.total
     kept = chunks_of(catalog, number)
-    assert run_all(catalog, threads=2) == [number]
+    assert run_all(catalog, crew=Crew(1)) == [number]
 
     untouched = ask(catalog, **asked)
     run_all(catalog)
@@ -188,7 +189,7 @@ def test_others_queue_ask_and_cancel_while_a_worker_runs(catalog, worker):
     assert out.strip() == f"finished: {short}"
     assert (job(catalog, long).state, job(catalog, short).state) == ("cancelled", "done")
     assert job(catalog, long).done < 20000
-    assert work(catalog, threads=1, watch=Watch(), study_id=long) == []
+    assert work(catalog, crew=Crew(0), watch=Watch(), study_id=long) == []
 
 
 def test_a_study_that_fails_says_why_and_the_next_one_runs(catalog):
@@ -215,7 +216,7 @@ def test_a_fault_in_a_task_fails_the_study_and_is_not_hidden(catalog, monkeypatc
 def test_a_stop_leaves_the_study_queued_with_what_is_finished(catalog, keep_at_once):
     number, watch = ask(catalog, method="spread", size=2000), Watch()
     watch.progress = lambda job, done, total: watch.stop.set()
-    assert work(catalog, threads=1, watch=watch) == []
+    assert work(catalog, crew=Crew(0), watch=watch) == []
     assert job(catalog, number).state == "queued"
     assert 0 < job(catalog, number).done < job(catalog, number).total
     assert run_all(catalog) == [number]

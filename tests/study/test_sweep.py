@@ -10,6 +10,7 @@ from catalog.store import Catalog
 from study import nominal, tasks
 from study.chart_file import ChartFileError, ending_of
 from study.commands import main
+from study.crew import Crew
 from study.runner import Watch, enqueue, register, work
 from study.sweeps import Asked, SweepError, Travel, banded_rows, grid, nominal_rows
 from tests.study.small_studies import DEMO, TOE, corner, demo, run_study, small_study
@@ -32,7 +33,7 @@ def shop(tmp_path_factory):
     register(catalog, corner(), by="test", why="test")
     with pytest.MonkeyPatch.context() as patch:
         patch.setattr(tasks, "CURVE_KEYS", {"bump": ("camber_deg",)})
-        work(catalog, threads=1, watch=Watch())
+        work(catalog, crew=Crew(0), watch=Watch())
     return path
 
 

@@ -6,7 +6,20 @@ import pytest
 from study import zones
 from study.tabulate import tables
 from study.tasks import StudyWork
-from study.verdicts import HOLD, OPEN, WATCH, Share, field_with, good_flags, looser, open_together, verdict_of
+from study.verdicts import (
+    FIRST_LOOK,
+    HOLD,
+    OPEN,
+    VERDICT_BUILDS,
+    WATCH,
+    Share,
+    field_with,
+    flags_alone,
+    good_flags,
+    looser,
+    open_together,
+    verdict_of,
+)
 from study.zones import Zone
 from tests.study.demo import study, wishbone
 
@@ -58,8 +71,39 @@ def test_the_counterfactual_share_is_that_of_a_study_drawn_so(judged):
     row = next(r for r in found["verdicts"] if r["source"] == "chassis.upper_front_pivot")
     wider = ERRORS + '\n"chassis.upper_front_pivot" = { plus_minus = 1.6 }'
     again = StudyWork(wishbone(), study(errors=wider, alignment=ALIGN, measures=LIMITS, more="size = 512"))
-    good, _ = good_flags(again, again.model.field)
+    good, _ = good_flags(again, again.model.field, builds=FIRST_LOOK)
     assert row["good_share"] == good.mean()
+    assert row["verdict"] == HOLD  # the first look had told: all of them say the same
+    every, _ = good_flags(again, again.model.field)
+    assert (every[:FIRST_LOOK] == good).all() and verdict_of(Share.of(every), 0.95) == HOLD
+    drawn, _ = good_flags(work, work.model.field)
+    assert row["as_drawn"] == drawn.mean()
+
+
+def test_a_verdict_that_the_first_look_leaves_open_is_built_on(judged):
+    work, found, facts = judged
+    flags, status = flags_alone(work, range(-1, len(work.model.sources)))
+    built = np.isfinite(flags).sum(axis=1)
+    assert set(built) == {FIRST_LOOK, VERDICT_BUILDS} and built[0] == VERDICT_BUILDS
+    for row, count in zip(flags[1:], built[1:], strict=True):
+        first = Share.of(row[:FIRST_LOOK], confidence=0.999)
+        assert (count == FIRST_LOOK) == (verdict_of(first, 0.95) != WATCH)
+        assert count == VERDICT_BUILDS or verdict_of(first, 0.95) == verdict_of(Share.of(row[:FIRST_LOOK]), 0.95)
+    assert not status.any()
+    others = sum(work.builds(task) for task in work.tasks if task.kind != "verdict")
+    assert facts["builds"] >= others + built.sum()
+
+
+def test_the_first_look_keeps_its_level():
+    """A share exactly at the wanted one is told beyond doubt in at most one of a thousand first looks (binomial law)."""
+    from scipy.stats import binom
+
+    told = sum(
+        binom.pmf(k, FIRST_LOOK, 0.95)
+        for k in range(FIRST_LOOK + 1)
+        if verdict_of(Share.of(np.arange(FIRST_LOOK) < k, confidence=0.999), 0.95) != WATCH
+    )
+    assert 0.0 < told <= 0.001
 
 
 def test_bands_of_the_alignment_are_never_proposed(judged):

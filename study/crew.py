@@ -1,0 +1,249 @@
+"""Helper processes of this machine that do tasks beside the process that keeps the catalog.
+
+Threads of one process speed a study up little: most array operations take microseconds, and after each a thread waits
+for the interpreter's lock. A helper has its own. Lines of JSON and the bytes of arrays go through its pipes; it sees no
+catalog, ends when its input ends, and whatever befalls it, its task is done here instead.
+"""
+
+import contextlib
+import json
+import os
+import signal
+import subprocess
+import sys
+import threading
+import time
+import tomllib
+from collections.abc import Callable, Iterator
+from concurrent.futures import CancelledError, Future, ThreadPoolExecutor
+from dataclasses import astuple
+from pathlib import Path
+from queue import SimpleQueue
+
+LONG_POSES = 1_000_000  # a helper takes a second or two to start: shorter work is done before
+LONG_BUILDS = 10_000
+
+
+class HelperLost(Exception):
+    """A helper that does not answer, or not as wanted."""
+
+
+def long_study(path: Path) -> bool:
+    """A first guess, before anything heavy is imported, whether the study of a file is worth helpers."""
+    try:
+        asked = tomllib.loads(path.read_text(encoding="utf-8")) if path.stat().st_size < 2**20 else {}
+        return int(asked["size"]) * (16 if asked["method"] == "sobol" else 1) >= LONG_BUILDS
+    except (OSError, ValueError, KeyError, TypeError, RecursionError):
+        return False
+
+
+# --- beside the catalog
+
+
+class Crew:
+    """Up to `size` helpers, started when first wanted and kept for the next study; `close` ends them at once."""
+
+    def __init__(self, size: int) -> None:
+        self.size = size
+        self.helpers: list[_Helper] = []
+
+    def start(self) -> None:
+        """Start what helpers there may be; they get ready by themselves."""
+        while len(self.helpers) < self.size:
+            self.helpers.append(_Helper())
+
+    def close(self) -> None:
+        for helper in self.helpers:
+            helper.end()
+        self.helpers.clear()
+
+    def __enter__(self) -> "Crew":
+        return self
+
+    def __exit__(self, *_) -> None:
+        self.close()
+
+    @contextlib.contextmanager
+    def of(self, here: Callable, plain: Callable[[], str], *, long: bool) -> Iterator["_Shift"]:
+        """An executor of one study's tasks. here: task → (Outcome, seconds) in this process; plain: what helpers are given."""
+        if long:
+            self.start()
+        shift = _Shift(here, plain() if self.helpers and long else "", self.helpers if long else [], size=1 + self.size)
+        try:
+            yield shift
+        finally:
+            shift.end()
+
+
+class _Shift:
+    """Tasks of one study to whoever is free: threads of this process, each replaced by a helper when that is ready."""
+
+    def __init__(self, here, plain, helpers, *, size):
+        self.here, self.plain, self.size = here, plain, size
+        self.free: SimpleQueue = SimpleQueue()
+        self.lock, self.ended = threading.Lock(), False
+        self.threads, self.ready = size, 0
+        for _ in range(size):
+            self.free.put(None)
+        self.pool = ThreadPoolExecutor(size)
+        for helper in helpers:
+            helper.when_ready(self._joins)
+
+    def submit(self, task) -> Future:
+        """A future of (Outcome, seconds); it raises what the task raises."""
+        return self.pool.submit(self._do, task)
+
+    def _joins(self, helper):
+        with self.lock:
+            self.ready += 1
+        self.free.put(helper)
+
+    def _do(self, task):
+        helper = self.free.get()
+        try:
+            with contextlib.suppress(HelperLost):
+                if helper is not None and not self.ended:
+                    return helper.do(self.plain, task)
+            if self.ended:
+                raise CancelledError
+            return self.here(task)
+        finally:
+            self._goes_back(helper)
+
+    def _goes_back(self, helper):
+        """A thread steps back for a helper that has joined, but one stays; for a lost helper a thread steps in."""
+        with self.lock:
+            if helper is not None and helper.lost:
+                self.ready, self.threads, helper = self.ready - 1, self.threads + 1, None
+            surplus = helper is None and self.threads > max(1, self.size - self.ready)
+            self.threads -= surplus
+        if not surplus:
+            self.free.put(helper)
+
+    def end(self):
+        """Nobody begins another task; those that wait for a hand are let go, lest they keep the program from ending."""
+        self.ended = True
+        self.pool.shutdown(wait=False, cancel_futures=True)
+        for _ in range(self.size):
+            self.free.put(None)
+
+
+class _Helper:
+    """One helper process."""
+
+    def __init__(self) -> None:
+        self.given, self.lost = None, False
+        self.waiting: list[Callable] = []
+        self.lock, self.one_at_a_time, self.is_ready = threading.Lock(), threading.Lock(), False
+        self.process = None
+        with contextlib.suppress(OSError, ValueError):
+            self.process = subprocess.Popen(
+                [sys.executable, "-P", "-W", "ignore", "-m", "study.crew"], stdin=subprocess.PIPE, stdout=subprocess.PIPE,
+                stderr=subprocess.DEVNULL, env=_environment(), start_new_session=True,
+            )  # fmt: skip
+            threading.Thread(target=self._await, daemon=True).start()
+
+    def _await(self):
+        with contextlib.suppress(OSError, ValueError):
+            if self.process.stdout.readline() != b"ready\n":
+                return
+            with self.lock:
+                self.is_ready, waiting = True, self.waiting
+            for call in waiting:
+                call(self)
+
+    def when_ready(self, call: Callable) -> None:
+        """Call with this helper as soon as it can take tasks; never where it cannot start."""
+        with self.lock:
+            if self.lost:
+                return
+            if not self.is_ready:
+                self.waiting = [call]  # of the latest study only
+                return
+        call(self)
+
+    def do(self, plain: str, task):
+        """(Outcome, seconds) of a task. Raises HelperLost, also where the task failed: it is then done here, and fails here."""
+        try:
+            with self.one_at_a_time:
+                return self._answer(plain, task)
+        except (OSError, ValueError, KeyError, TypeError) as error:
+            self.end()
+            raise HelperLost(str(error)) from None
+
+    def _answer(self, plain, task):
+        import numpy as np
+
+        from study.tasks import Outcome
+
+        if self.given != plain:
+            self._say({"study": plain})
+            self.given = plain
+        self._say({"task": astuple(task)})
+        head = json.loads(self.process.stdout.readline())
+        rows, builds = head["shape"]
+        values = np.frombuffer(self._bytes(8 * rows * builds)).reshape(rows, builds)
+        return Outcome(values, np.frombuffer(self._bytes(builds), np.uint8)), head["seconds"]
+
+    def _say(self, what):
+        self.process.stdin.write(json.dumps(what).encode() + b"\n")
+        self.process.stdin.flush()
+
+    def _bytes(self, count):
+        found = self.process.stdout.read(count)
+        if len(found) != count:
+            raise ValueError("cut short")
+        return bytearray(found)
+
+    def end(self) -> None:
+        """It holds nothing that could be lost."""
+        self.lost = True
+        if self.process is not None:
+            self.process.kill()
+            self.process.wait()
+            for pipe in (self.process.stdin, self.process.stdout):
+                with contextlib.suppress(OSError, ValueError):
+                    pipe.close()
+
+
+def _environment():
+    return os.environ | {"PYTHONPATH": os.pathsep.join(path for path in sys.path if path), "OPENBLAS_NUM_THREADS": "1"}
+
+
+# --- in a helper
+
+
+def serve(given, taken) -> None:
+    """Do the tasks that come in, until no more come. given, taken: binary pipes."""
+    from threadpoolctl import threadpool_limits
+
+    from study.plain_work import from_plain
+    from study.tasks import Task
+
+    threadpool_limits(1)
+    taken.write(b"ready\n")
+    taken.flush()
+    work = None
+    for line in given:
+        asked = json.loads(line)
+        if "study" in asked:
+            work = from_plain(asked["study"])
+            continue
+        start = time.monotonic()
+        outcome = work.run(Task(*asked["task"]))
+        head = {"shape": outcome.values.shape, "seconds": time.monotonic() - start}
+        taken.write(json.dumps(head).encode() + b"\n" + outcome.values.astype(float).tobytes() + outcome.status.tobytes())
+        taken.flush()
+
+
+def main() -> None:
+    """A helper's life."""
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    taken = os.fdopen(os.dup(1), "wb")
+    os.dup2(2, 1)  # whatever else is printed stays out of the pipe
+    with contextlib.suppress(OSError):
+        serve(sys.stdin.buffer, taken)
+
+
+if __name__ == "__main__":
+    main()
