@@ -31,7 +31,8 @@ class HelperLost(Exception):
 def long_study(path: Path) -> bool:
     """A first guess, before anything heavy is imported, whether the study of a file is worth helpers."""
     try:
-        asked = tomllib.loads(path.read_text(encoding="utf-8")) if path.stat().st_size < 2**20 else {}
+        small = path.is_file() and path.stat().st_size < 2**20
+        asked = tomllib.loads(path.read_text(encoding="utf-8")) if small else {}
         return int(asked["size"]) * (16 if asked["method"] == "sobol" else 1) >= LONG_BUILDS
     except (OSError, ValueError, KeyError, TypeError, RecursionError):
         return False

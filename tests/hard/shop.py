@@ -53,7 +53,7 @@ class Command:
     def __init__(self, words, folder: Path, said: Path, *, pause=0.0, prepare=None, helpers=False, catalog: Path):
         self.said = said
         environment = {"HOLDTIGHT_CATALOG": str(catalog)}
-        asked = ([str(word) for word in words], str(folder), environment, pause, str(said), prepare)
+        asked = ([str(word) for word in words], str(folder), environment, pause, str(said), prepare, helpers)
         self.process = _START.Process(target=_command, args=asked, daemon=True)
         self.process.start()
 
