@@ -55,6 +55,20 @@ def store_chunk(
     return True
 
 
+def drop_chunks(con: "DuckDBPyConnection", study_id: int, worker: str, *, version: str) -> int:
+    """Forget what another version of the program has kept of a study that this worker runs; gives how many chunks.
+
+    Chunks are cut and computed by one version: those of two would make a result that neither would give.
+    """
+    if not is_ours(con, study_id, worker):
+        return 0
+    found = con.execute("SELECT count(*) FROM kept.chunks WHERE study_id = ?", [study_id]).fetchone()[0]
+    for table in ("build_values", "builds", "chunks") if found else ():
+        con.execute(f"DELETE FROM kept.{table} WHERE study_id = ?", [study_id])
+    con.execute("UPDATE kept.studies SET version = ?, done_builds = 0 WHERE id = ?", [version, study_id])
+    return found
+
+
 def load_chunk(
     con: "DuckDBPyConnection", study_id: int, *, stage: str, chunk_no: int
 ) -> "tuple[dict[str, np.ndarray], np.ndarray]":

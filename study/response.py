@@ -17,7 +17,7 @@ from study.kernel import solve as kernel
 from study.measures import KEYS, AxleView
 from study.stations import STEP, Hand, Spot
 
-BLOCK = 10_240  # smaller ones keep threads waiting for each other's interpreter lock
+BLOCK = 6_144  # builds at a time: fewer cost more interpreter time and keep threads waiting for it, more take more memory
 BEFORE_LEAVES_OUT = ("toe", "camber", "caster")
 NO_STUDY = SimpleNamespace(errors=(), alignment=None, sides="mirrored", jigs=(), measures=())
 

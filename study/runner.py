@@ -18,7 +18,7 @@ import numpy as np
 from threadpoolctl import threadpool_limits
 
 from catalog import processes, queue, revisions
-from catalog.chunks import load_chunk, store_chunk
+from catalog.chunks import drop_chunks, load_chunk, store_chunk
 from catalog.errors import HoldtightError, InputError, WorkError
 from catalog.store import Catalog, CatalogBusy, CatalogFailed, CatalogGone, CatalogMissing, CatalogNotWritable
 from study.cluster import ClusterLost, ClusterPool
@@ -30,9 +30,9 @@ from study.tabulate import tables
 from study.tasks import Outcome
 
 HEARTBEAT_S = 10.0
-HELD_BYTES = 64 * 2**20
+HELD_BYTES, KEEP_BYTES = 16 * 2**20, 8 * 2**20
 KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the catalog has a price of its own,
-KEEP_TIMES = 4.0  # and so many times what the last write took
+KEEP_TIMES = 4.0  # and so many times what the last write took, unless they grow large
 
 
 class StudyFailed(WorkError):
@@ -133,8 +133,7 @@ def work(
     """
     worker, finished = queue.worker_name(), []
     while not watch.stop.is_set():
-        with catalog.write() as con:
-            job = queue.claim(con, worker, study_id=study_id)
+        job = _claimed(catalog, worker, study_id)
         if job is None:
             break
         try:
@@ -163,6 +162,16 @@ def work(
         if study_id is not None:
             break
     return finished
+
+
+def _claimed(catalog, worker, study_id):
+    """The next study to run, cleared of what another version of the program has begun; None without one."""
+    with catalog.write() as con:
+        job = queue.claim(con, worker, study_id=study_id)
+        if job is None or job.version == program_version():
+            return job
+        drop_chunks(con, job.id, worker, version=program_version())
+        return queue.get(con, job.id)
 
 
 class _Run:
@@ -237,7 +246,7 @@ class _Run:
         """Keep what is fresh, a second's worth at a time, and stop where asked to; False when the study is not ours any more."""
         stop = self.watch.stop.is_set()
         patience = min(max(KEEP_S, KEEP_TIMES * self.write_s), HEARTBEAT_S) if fresh else HEARTBEAT_S
-        late = time.monotonic() - self.last_sign > patience
+        late = time.monotonic() - self.last_sign > patience or sum(o.values.nbytes for _, o, _ in fresh) > KEEP_BYTES
         if (stop or last or late) and not (self._keep(fresh) if fresh else self._alive()):
             return False
         if stop or last or late:

@@ -5,6 +5,7 @@ import math
 import numpy as np
 
 from study.bands import curve_rows
+from study.drawn import gathered
 from study.linear_model import LinearModel, is_nonlinear
 from study.measures import KEYS
 from study.methods import spread
@@ -46,19 +47,6 @@ def tables(work: StudyWork, outcomes: dict) -> tuple[dict[str, list[dict]], dict
     return out, facts
 
 
-def _gathered(work, tasks, outcomes):
-    """Values (rows, builds) and status (builds,) of all draws, filled task by task so that none is held twice."""
-    if not tasks:
-        return None, None
-    ends = np.cumsum([0] + [work.builds(task) for task in tasks])
-    values, status = None, np.empty(ends[-1], np.uint8)
-    for task, start, end in zip(tasks, ends[:-1], ends[1:], strict=True):
-        outcome = outcomes[task.number]
-        values = np.empty((len(outcome.values), ends[-1])) if values is None else values
-        values[:, start:end], status[start:end] = outcome.values, outcome.status
-    return values, status
-
-
 class _Stage:
     """One stage of a study."""
 
@@ -69,7 +57,7 @@ class _Stage:
         tasks = [t for t in work.tasks if t.stage == stage]
         effects = outcomes[next(t.number for t in tasks if t.kind == "effects")].values
         self.linear = LinearModel(work, stage, effects)
-        self.drawn, self.status = _gathered(work, [t for t in tasks if t.kind == "draws"], outcomes)
+        self.drawn = gathered(work, [t for t in tasks if t.kind == "draws"], outcomes)
         self.worst = next((outcomes[t.number] for t in tasks if t.kind == "worst"), None)
         self.lots = next((outcomes[t.number] for t in tasks if t.kind == "lots"), None)
         gone = {"alignment.toe", "alignment.camber", "alignment.caster"} if stage == "before" else set()
@@ -87,9 +75,8 @@ class _Stage:
     # --- sampled methods
 
     def _analysed(self):
-        m = len(self.measures)
-        bad = self.status > 0
-        result = self.work.method.analyse(self.work.problem, self.drawn[:m], seed=self.study.seed, unassembled=bad)
+        bad = self.drawn.status > 0
+        result = self.work.method.analyse(self.work.problem, self.drawn.values, seed=self.study.seed, unassembled=bad)
         self.facts["unassembled"] += int(bad.sum())
         self.facts["dropped_blocks"] = max(self.facts["dropped_blocks"], int(getattr(result, "dropped_blocks", 0) or 0))
         if getattr(result, "withheld", False):
@@ -116,7 +103,7 @@ class _Stage:
     def _is_still(self, i):
         """Whether nothing moves the measure: what spread it has is the rounding of the solver."""
         if self.drawn is not None:
-            values = self.drawn[i, self.status == 0]
+            values = self.drawn.values[i, self.drawn.status == 0]
             values = values[np.isfinite(values)]
             spread_of = float(values.std()) if len(values) else math.nan
         else:
@@ -191,7 +178,7 @@ class _Stage:
     def _stats(self):
         m = len(self.measures)
         values, bad = self._independent()
-        summary = spread.summary(values, unassembled=bad[0]) if values is not None and values.shape[1] else None
+        summary = self._summary(values, bad[0])
         limits = np.array([measure.limits or (-np.inf, np.inf) for measure in self.measures]).reshape(m, 2)
         limited = any(measure.limits for measure in self.measures)
         good = None
@@ -218,17 +205,17 @@ class _Stage:
         if summary is not None and self.method == "spread":
             self._correlations(summary)
 
+    def _summary(self, values, bad):
+        if self.method == "spread":
+            return self.result
+        return spread.summary(values, unassembled=bad) if values is not None and values.shape[1] else None
+
     def _independent(self):
         """Values (M, N) of independent builds and the flags (unassembled, adjuster ran out), each (N,)."""
-        m = len(self.measures)
         if self.drawn is None:
             return self._linear_draws(), (np.zeros(LINEAR_DRAWS, bool), np.zeros(LINEAR_DRAWS, bool))
-        rows = self.work.method.independent_rows(self.work.problem, self.study.size)
-        a = (self.drawn.shape[0] - m) // 2
-        if len(rows) == self.drawn.shape[1]:
-            rows = slice(None)  # no copy of what may be large
-        ran_out = (self.drawn[m + a :, rows] > 0).any(axis=0)
-        return self.drawn[:m, rows], (self.status[rows] > 0, ran_out)
+        values, *bad = self.drawn.independent()
+        return values, bad
 
     def _linear_draws(self):
         return self.linear.draws(LINEAR_DRAWS) if self.method == "linear" else None
@@ -293,21 +280,18 @@ class _Stage:
 
     def _demand(self):
         """What independent builds ask of the adjusters; a screening walk is no sample of builds and has none."""
-        m = len(self.measures)
-        rows = self.work.method.independent_rows(self.work.problem, self.study.size)
-        a = (self.drawn.shape[0] - m) // 2
-        hands = self.work.after.hands
+        hands, rows = self.work.after.hands, self.drawn.rows
         names = [(name, hand.bench, k) for name, hand in hands.items() for k in range(len(hand.bench.by))]
-        for k, (hand, bench, number) in enumerate(names if len(rows) else ()):
-            settings, out = self.drawn[m + k, rows], self.drawn[m + a + k, rows]
-            sound = settings[np.isfinite(settings) & (self.status[rows] == 0)]
+        for k, (hand, bench, number) in enumerate(names if self.drawn.has_independent else ()):
+            settings = self.drawn.settings[k, rows]
+            sound = settings[np.isfinite(settings) & (self.drawn.status[rows] == 0)]
             if len(sound):
                 step = bench.step[number]
                 sound = step * np.round(sound / step) if step else sound
                 self.out["demand"].append({
                     "adjuster": bench.targets[number] + (f" ({hand})" if len(hands) > 1 else ""), "by": bench.by[number],
                     "unit": "mm", "low": float(sound.min()), "high": float(sound.max()), **_quantiles(sound, QUANTILES),
-                    "ran_out_share": float(np.nanmean(out)),
+                    "ran_out_share": float(self.drawn.ran_out[k, rows].mean()),
                 })  # fmt: skip
 
     def _worst(self):

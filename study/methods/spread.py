@@ -10,6 +10,7 @@ from study.methods.blocks import unassembled_builds
 from study.methods.problem import Problem
 
 WALKS = False
+_BUILDS_AT_ONCE = 65_536
 QUANTILES = (0.005, 0.025, 0.05, 0.25, 0.5, 0.75, 0.95, 0.975, 0.995)
 
 
@@ -87,7 +88,7 @@ def analyse(
 def summary(values: np.ndarray, *, unassembled: np.ndarray | None = None) -> Summary:
     """Statistics of values (M, builds), NaN where a build has none."""
     failed = unassembled_builds(values) if unassembled is None else np.asarray(unassembled, dtype=bool)
-    rows = [_statistics(row[np.isfinite(row)]) for row in values[:, ~failed]]
+    rows = [_statistics(row[np.isfinite(row) & ~failed]) for row in values]
     table = np.array(rows).reshape(len(values), 5 + len(QUANTILES))
     return Summary(
         mean=table[:, 0],
@@ -96,7 +97,7 @@ def summary(values: np.ndarray, *, unassembled: np.ndarray | None = None) -> Sum
         high=table[:, 3],
         defined=table[:, 4].astype(int),
         quantiles=table[:, 5:],
-        correlations=_correlations(values[:, ~failed]),
+        correlations=_correlations(values, ~failed),
         builds=values.shape[1],
         unassembled=int(failed.sum()),
     )
@@ -156,16 +157,27 @@ def _statistics(row: np.ndarray) -> list[float]:
     return [row.mean(), row.std(ddof=1), row.min(), row.max(), len(row), *np.quantile(row, QUANTILES)]
 
 
-def _correlations(values: np.ndarray) -> np.ndarray:
-    """Pearson correlations (M, M); NaN with a constant measure or one that is never defined."""
+def _correlations(values: np.ndarray, kept: np.ndarray) -> np.ndarray:
+    """Pearson correlations (M, M) over the `kept` builds (builds,); NaN with a constant measure or one never defined.
+
+    Taken some builds at a time: no second copy of what may be large.
+    """
     found = np.full((len(values), len(values)), math.nan)
-    known = np.flatnonzero(np.isfinite(values).any(axis=1)) if values.size else np.empty(0, dtype=int)
-    whole = values[known][:, np.isfinite(values[known]).all(axis=0)]
-    if whole.shape[1] < 2:
+    known = [i for i, row in enumerate(values) if np.isfinite(row[kept]).any()]
+    whole = kept.copy()
+    for i in known:
+        whole &= np.isfinite(values[i])
+    builds = np.flatnonzero(whole)
+    if len(builds) < 2:
         return found
-    noise = 64 * np.finfo(float).eps * np.abs(whole).max(axis=1)
-    whole = whole - whole.mean(axis=1, keepdims=True)
-    size = np.sqrt((whole**2).mean(axis=1))
+    mean = np.array([values[i][whole].mean() for i in known])
+    noise = 64 * np.finfo(float).eps * np.array([np.abs(values[i][whole]).max() for i in known])
+    sums = np.zeros((len(known), len(known)))
+    for start in range(0, len(builds), _BUILDS_AT_ONCE):
+        part = values[np.ix_(known, builds[start : start + _BUILDS_AT_ONCE])] - mean[:, None]
+        sums += np.einsum("in,jn->ij", part, part)
+    covariance = sums / len(builds)
+    size = np.sqrt(np.diag(covariance))
     size = np.where(size > noise, size, math.nan)
-    found[np.ix_(known, known)] = np.einsum("in,jn->ij", whole, whole) / whole.shape[1] / np.outer(size, size)
+    found[np.ix_(known, known)] = covariance / np.outer(size, size)
     return np.clip(found, -1.0, 1.0)

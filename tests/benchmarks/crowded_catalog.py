@@ -5,15 +5,15 @@ from catalog.store import Catalog
 GEOMETRIES, STUDIES_EACH, MEASURES, SOURCES = 1000, 3, 12, 16
 
 
-def make(path) -> Catalog:
-    """GEOMETRIES geometries with STUDIES_EACH finished Sobol' studies each."""
+def make(path, *, geometries=GEOMETRIES) -> Catalog:
+    """Some geometries with STUDIES_EACH finished Sobol' studies each."""
     store = Catalog(path)
-    studies = GEOMETRIES * STUDIES_EACH
+    studies = geometries * STUDIES_EACH
     with store.write() as con:
-        con.execute(f"INSERT INTO kept.geometries SELECT i, 'g' || i FROM range(1, {GEOMETRIES + 1}) t(i)")
+        con.execute(f"INSERT INTO kept.geometries SELECT i, 'g' || i FROM range(1, {geometries + 1}) t(i)")
         con.execute(
             "INSERT INTO kept.revisions SELECT i, i, 1, 'h' || i, 'double-wishbone', 'front', 'x', 'mm', 'left', '', now(), 'x', '',"
-            f" '', '{{}}' FROM range(1, {GEOMETRIES + 1}) t(i)"
+            f" '', '{{}}' FROM range(1, {geometries + 1}) t(i)"
         )
         con.execute(
             "INSERT INTO kept.studies (id, title, state, method, size, seed, sides, revision_id, text, version, created, by_whom,"

@@ -152,13 +152,13 @@ def memory(builds):
     return float(peak), float(seconds)
 
 
-def critical_over_many():
-    """Seconds of what `critical` asks of a catalog of 1,000 geometries with 3 studies each, opening included."""
+def critical_over(geometries):
+    """Seconds of what `critical` asks of a catalog of so many geometries with 3 studies each, opening included."""
     from catalog import results
     from tests.benchmarks.crowded_catalog import make
 
     with tempfile.TemporaryDirectory() as folder:
-        store = make(f"{folder}/c.duckdb")
+        store = make(f"{folder}/c.duckdb", geometries=geometries)
 
         def ask():
             with store.read() as con:
@@ -168,19 +168,26 @@ def critical_over_many():
         return best(ask)
 
 
+ALL, ONE = '"*" = { plus_minus = 1.0 }', '"tie_rod.length" = { length = 1.0 }'
+SOME = '"chassis.*" = { plus_minus = 1.0 }'
+
+
 def growth():
-    """Microseconds a build of the response against builds, positions and sources."""
-    rows = []
-    for what, builds, positions, errors in (
-        ("1,024 builds", 1024, 13, '"*" = { plus_minus = 1.0 }'), ("4,096 builds", 4096, 13, '"*" = { plus_minus = 1.0 }'),
-        ("16,384 builds", 16384, 13, '"*" = { plus_minus = 1.0 }'), ("3 positions", 4096, 3, '"*" = { plus_minus = 1.0 }'),
-        ("49 positions", 4096, 49, '"*" = { plus_minus = 1.0 }'), ("1 source", 4096, 13, '"tie_rod.length" = { length = 1.0 }'),
-    ):  # fmt: skip
-        sweep = f'[[measures]]\nof = "toe_deg"\nover = {{ bump = [-30, 30, {positions}] }}\ntake = "range"\n'
-        work = StudyWork(wishbone(), study(errors=errors, measures=sweep))
-        drawn = work.model.field.to_errors(np.random.default_rng(3).random((work.model.scalars, builds)))
-        rows.append((what, 1e6 * best(lambda work=work, drawn=drawn: work.after.evaluate(drawn), repeats=3) / builds))
-    return rows
+    """(what, how many, microseconds a build) of the response against builds, sources and positions: each line else alike."""
+    for builds in (512, 4096, 16384, 65536):
+        yield "builds", builds, _micro(builds=builds)
+    for errors in (ONE, SOME, ALL):
+        yield "scalars of sources", *_micro(errors=errors, count=True)
+    for positions in (3, 13, 49, 99):
+        yield "positions", positions, _micro(positions=positions)
+
+
+def _micro(*, builds=4096, positions=13, errors=ALL, count=False):
+    sweep = f'[[measures]]\nof = "toe_deg"\nover = {{ bump = [-30, 30, {positions}] }}\ntake = "range"\n'
+    work = StudyWork(wishbone(), study(errors=errors, measures=sweep))
+    drawn = work.model.field.to_errors(np.random.default_rng(3).random((work.model.scalars, builds)))
+    micro = 1e6 * best(lambda: work.after.evaluate(drawn), repeats=3) / builds
+    return (work.model.scalars, micro) if count else micro
 
 
 def main():
@@ -195,16 +202,21 @@ def main():
     rows.append(("two tasks at a time (--threads 2) against one", f"{one / two:.2f} x", "1.6 x", one / two >= 1.6))
     seconds = start_of_the_command()
     rows.append(("start of the command, --help", f"{seconds:.2f} s", "0.4 s", seconds < 0.4))
-    seconds = critical_over_many()
+    seconds = critical_over(1000)
     rows.append(("critical over 1,000 geometries with 3 studies each", f"{seconds:.2f} s", "0.3 s", seconds < 0.3))
-    (small, _), (large, took) = memory(16_384), memory(1_000_000 if "--long" in sys.argv else 131_072)
-    size = "1,000,000" if "--long" in sys.argv else "131,072"
-    rows.append((f"memory, {size} builds against 16,384", f"{large:.0f} against {small:.0f} MiB, {took:.0f} s", "500", large < 500))
+    most = 1_000_000 if "--long" in sys.argv else 131_072
+    held = {builds: memory(builds) for builds in (16_384, 131_072, most)}
+    peak, took = held[most]
+    rows.append((f"memory, {most:,} builds", f"{peak:.0f} MiB with a helper, {took:.0f} s", "500", peak < 500))
     for what, found, wanted, reached in rows:
         print(f"{what:<56} {found:<44} wanted {wanted:<6} {'reached' if reached else 'MISSED'}")
     if "--long" in sys.argv:
-        for what, micro in growth():
-            print(f"growth, {what:<20} {micro:8.1f} us a build (toe range over bump, before alignment)")
+        for builds, (mib, took) in held.items():
+            print(f"growth, memory          {builds:>9,} builds     {mib:6.0f} MiB in all, {took:.0f} s")
+        for what, many, micro in growth():
+            print(f"growth, {what:<18} {many:>6,} {micro:8.1f} us a build (toe range over bump, before alignment)")
+        for geometries in (10, 100, 1000):
+            print(f"growth, geometries      {geometries:>6,} {critical_over(geometries):8.3f} s for `critical`")
 
 
 if __name__ == "__main__":

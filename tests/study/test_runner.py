@@ -222,6 +222,23 @@ def test_a_stop_leaves_the_study_queued_with_what_is_finished(catalog, keep_at_o
     assert run_all(catalog) == [number]
 
 
+def test_what_another_version_has_begun_is_done_anew(catalog, keep_at_once, monkeypatch):
+    untouched, number = ask(catalog, method="spread", size=2000), ask(catalog, method="spread", size=2000)
+    work(catalog, crew=Crew(0), watch=Watch(), study_id=untouched)
+    watch = Watch()
+    watch.progress = lambda job, done, total: watch.stop.set()
+    monkeypatch.setattr(tasks, "BUILDS_PER_TASK", 100)  # the other version cuts in another way
+    assert work(catalog, crew=Crew(0), watch=watch) == [] and job(catalog, number).done
+    with catalog.write() as con:
+        con.execute("UPDATE kept.studies SET version = '0.0.1' WHERE id = ?", [number])
+    monkeypatch.setattr(tasks, "BUILDS_PER_TASK", SMALL["BUILDS_PER_TASK"])
+    assert run_all(catalog) == [number]
+    found, wanted = job(catalog, number), job(catalog, untouched)
+    assert found.result_hash == wanted.result_hash and found.version == wanted.version
+    assert found.done == found.total == wanted.done
+    assert chunks_of(catalog, number) == chunks_of(catalog, untouched)
+
+
 def test_a_study_names_a_revision_that_stays_when_the_file_changes(catalog, tmp_path):
     file = tmp_path / "front-wishbone.toml"
     text = DEMO.read_text(encoding="utf-8")
