@@ -238,8 +238,8 @@ def _check_target(target: Path) -> None:
 
 
 def _copy(path: Path, beside: Path) -> None:
-    words = [sys.executable, "-I", "-S", "-c", _COPY, str(path.absolute()), str(beside.absolute())]
-    done = subprocess.run(words, capture_output=True, text=True, check=False)
+    words = [sys.executable, "-I", "-S", "-X", "utf8", "-c", _COPY, str(path.absolute()), str(beside.absolute())]
+    done = subprocess.run(words, capture_output=True, encoding="utf-8", errors="replace", check=False)
     if done.returncode:
         reason = (done.stderr.strip().splitlines() or ["no reason given"])[-1]
         raise BackupFailed(f"{beside.parent}: the copy could not be written ({reason}); make room or name another folder.")

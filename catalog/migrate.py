@@ -1,5 +1,6 @@
-"""Numbered migrations of a catalog file, one transaction each, on a copy that replaces the file."""
+"""Numbered migrations of a catalog file, all in one transaction, on a copy that replaces the file."""
 
+import contextlib
 import hashlib
 import os
 import sys
@@ -13,6 +14,7 @@ from catalog.errors import WorkError
 
 MIGRATIONS = Path(__file__).parent / "migrations"
 BLOCK_BYTES = "65536"  # a quarter of the usual: a small catalog stays small, a big one is no bigger
+WINDOWS = os.name == "nt"
 VIEWS = Path(__file__).parent / "views.sql"
 
 
@@ -65,9 +67,13 @@ def create(path: Path) -> None:
 def upgrade(con: Any, path: Path) -> None:
     """Bring the file at path, held open by con, to the newest schema.
 
-    A copy is migrated and then replaces the file, so that a failure leaves the old file untouched.
+    A copy is migrated and then replaces the file, so that a failure leaves the old file untouched. On Windows, where a
+    file that is open can be neither copied nor replaced, the file itself is migrated in one transaction.
     """
     since = schema_version(con)
+    if WINDOWS:
+        _migrate(con, since=since or 0, catalog=path)
+        return
     con.execute("CHECKPOINT")
     copy = _beside(path, "migrating")
     try:
@@ -104,24 +110,31 @@ def program_version() -> str:
 def _apply(path: Path, *, since: int, catalog: Path) -> None:
     import duckdb
 
-    with duckdb.connect(str(path), config={"default_block_size": BLOCK_BYTES}) as con:
-        for step in (step for step in migrations() if step.number > since):
-            try:
-                con.execute("BEGIN")
-                con.execute(step.path.read_text(encoding="utf-8"))
-                now = datetime.now(UTC).replace(tzinfo=None)
-                row = [step.number, step.path.name, now, program_version()]
-                con.execute("INSERT INTO kept.schema_migrations VALUES (?, ?, ?, ?)", row)
-                con.execute("COMMIT")
-            except duckdb.Error as problem:
-                first = str(problem).splitlines()[0]
-                raise MigrationFailed(
-                    f"{catalog}: migration {step.path.name} failed ({first}); the catalog is as it was."
-                    " Use the version of the program that wrote it, and report this."
-                ) from problem
-        _load_processes(con)
-        refresh_views(con)
-        con.execute("CHECKPOINT")
+    place = os.fsencode(path).decode()  # the database takes UTF-8 whatever the locale
+    with duckdb.connect(place, config={"default_block_size": BLOCK_BYTES}) as con:
+        _migrate(con, since=since, catalog=catalog)
+
+
+def _migrate(con: Any, *, since: int, catalog: Path) -> None:
+    import duckdb
+
+    con.execute("BEGIN")
+    for step in (step for step in migrations() if step.number > since):
+        try:
+            con.execute(step.path.read_text(encoding="utf-8"))
+            now = datetime.now(UTC).replace(tzinfo=None)
+            row = [step.number, step.path.name, now, program_version()]
+            con.execute("INSERT INTO kept.schema_migrations VALUES (?, ?, ?, ?)", row)
+        except duckdb.Error as problem:
+            first = str(problem).splitlines()[0]
+            raise MigrationFailed(
+                f"{catalog}: migration {step.path.name} failed ({first}); the catalog is as it was."
+                " Use the version of the program that wrote it, and report this."
+            ) from problem
+    con.execute("COMMIT")
+    _load_processes(con)
+    refresh_views(con)
+    con.execute("CHECKPOINT")
 
 
 def _load_processes(con: Any) -> None:
@@ -138,9 +151,10 @@ def _copy(path: Path, copy: Path) -> None:
     # closing any handle of this process on the file would drop the lock con holds: another process copies
     code = "import shutil, sys; shutil.copyfile(sys.argv[1], sys.argv[2])"
     done = subprocess.run(
-        [sys.executable, "-I", "-S", "-c", code, str(path), str(copy)],
+        [sys.executable, "-I", "-S", "-X", "utf8", "-c", code, str(path), str(copy)],
         capture_output=True,
-        text=True,
+        encoding="utf-8",
+        errors="replace",
         check=False,
     )
     if done.returncode:
@@ -156,4 +170,5 @@ def _beside(path: Path, what: str) -> Path:
 
 def _remove(path: Path) -> None:
     for leftover in (path, path.with_name(path.name + ".wal")):
-        leftover.unlink(missing_ok=True)
+        with contextlib.suppress(OSError):  # a virus scanner may still look at it
+            leftover.unlink(missing_ok=True)

@@ -191,8 +191,8 @@ def _free(job: Job, *, stale_s: float) -> bool:
 def _known_dead(worker: str) -> bool:
     """Whether the worker's process was on this host and has ended."""
     host, _, rest = worker.rpartition(":")[0].rpartition(":")
-    if host != socket.gethostname() or not rest.isdigit():
-        return False
+    if host != socket.gethostname() or not rest.isdigit() or os.name == "nt":
+        return False  # on Windows signal 0 is Ctrl-C: there the heartbeat alone tells
     try:
         os.kill(int(rest), 0)
     except ProcessLookupError:

@@ -21,6 +21,8 @@ if TYPE_CHECKING:
 
 DEFAULT_NAME = "holdtight.duckdb"
 WAIT_S = 20.0
+BUSY = ("Could not set lock", "different configuration", "already open in", "being used by another process")
+DENIED = ("Permission denied", "Read-only file system", "Access is denied")
 DAMAGE = ("Could not read enough bytes", "Corrupt database", "checksum")
 FULL = ("No space left on device", "File too large", "Disk quota exceeded", "There is not enough space")
 _turns: dict[Path, threading.Lock] = {}
@@ -100,18 +102,27 @@ class Catalog:
     def still(self) -> "Iterator[DuckDBPyConnection]":
         """The file at rest: all that is kept stands in it, and nobody writes to it meanwhile. To copy it.
 
-        Opening the file within this process would drop the lock: let another process copy.
+        It is held for reading: what is held for writing, nobody else can read on Windows. Opening the file within this
+        process would drop the lock on other systems: let another process copy.
         """
+        deadline = time.monotonic() + self.wait_s
+        while True:
+            refused = self._put_down()
+            with self.read() as con:
+                if not _has_content(_wal(self.path)):
+                    yield con
+                    return
+            if refused or time.monotonic() > deadline:
+                raise refused or CatalogBusy(f"{self.path}: others went on writing for {self.wait_s:g} s; try again.")
+
+    def _put_down(self) -> CatalogNotWritable | None:
+        """All that is kept into the file; what refused it where it may not be written."""
         try:
             with self._turn(), self._opened(read_only=False) as con:
                 con.execute("CHECKPOINT")
-                yield con
-        except CatalogNotWritable:
-            wal = _wal(self.path)
-            if wal.exists() and wal.stat().st_size:
-                raise
-            with self.read() as con:
-                yield con
+        except CatalogNotWritable as problem:
+            return problem
+        return None
 
     @contextlib.contextmanager
     def _turn(self) -> Iterator[None]:
@@ -190,7 +201,7 @@ class Catalog:
             self._check_path(read_only=read_only)
             try:
                 before = _identity(self.path)
-                con = duckdb.connect(str(self.path), read_only=read_only)
+                con = duckdb.connect(_text(self.path), read_only=read_only)
             except duckdb.Error as problem:
                 self._raise_unless_busy(problem, read_only=read_only, late=time.monotonic() > deadline)
             else:
@@ -203,6 +214,8 @@ class Catalog:
 
     def _check_path(self, *, read_only: bool) -> None:
         path = self.path
+        if _text(path) is None:
+            raise CatalogForeign(f"{path}: the name is not UTF-8, which the catalog's needs; choose another.")
         if path.is_dir():
             raise CatalogForeign(f"{path}: is a folder; name a file, for instance {path / DEFAULT_NAME}.")
         if not path.exists():
@@ -233,7 +246,7 @@ class Catalog:
             yield
         except (duckdb.Error, OSError, migrate.MigrationFailed) as problem:
             text = str(problem)
-            if "Permission denied" in text or "Read-only file system" in text:
+            if isinstance(problem, PermissionError) or any(sign in text for sign in DENIED):
                 raise CatalogNotWritable(
                     f"{self.path}: the folder {self.path.parent} may not be written; choose another."
                 ) from problem
@@ -243,7 +256,7 @@ class Catalog:
 
     def _raise_unless_busy(self, problem: Exception, *, read_only: bool, late: bool) -> None:
         text = str(problem)
-        busy = "Could not set lock" in text or "different configuration" in text
+        busy = any(sign in text for sign in BUSY)
         if busy and not late:
             return
         if busy:
@@ -252,9 +265,13 @@ class Catalog:
             raise CatalogBusy(
                 f"{self.path}: {who} held the catalog for {self.wait_s:g} s; try again when it is done."
             ) from problem
-        if "Permission denied" in text or "Read-only file system" in text:
+        if any(sign in text for sign in DENIED):
             what = "read" if read_only else "written"
             raise CatalogNotWritable(f"{self.path}: may not be {what}; change its permissions.") from problem
+        if "locks are not supported" in text:
+            raise CatalogNotWritable(
+                f"{self.path}: its disk knows no file locks, so it is only read there; put the catalog on a disk of this machine."
+            ) from problem
         if "version number" in text:
             raise CatalogTooNew(
                 f"{self.path}: {_first_line(problem)}; use a newer duckdb package."
@@ -274,6 +291,21 @@ class Catalog:
         raise CatalogForeign(
             f"{self.path}: is no catalog or is damaged ({_first_line(problem)}); restore a copy."
         ) from problem
+
+
+def _text(path: Path) -> str | None:
+    """The path as the database takes it, UTF-8 whatever the locale; None for a name that is none."""
+    try:
+        return os.fsencode(path).decode()
+    except UnicodeDecodeError:
+        return None
+
+
+def _has_content(path: Path) -> bool:
+    try:
+        return path.stat().st_size > 0
+    except FileNotFoundError:
+        return False
 
 
 def _wal(path: Path) -> Path:

@@ -60,7 +60,7 @@ COMMENT ON COLUMN studies.seed IS 'seed of all draws';
 COMMENT ON COLUMN studies.sides IS 'mirrored | independent';
 COMMENT ON COLUMN studies.geometry IS 'name of the geometry';
 COMMENT ON COLUMN studies.revision IS 'number of its revision';
-COMMENT ON COLUMN studies.version IS 'version of the program that queued it';
+COMMENT ON COLUMN studies.version IS 'version of the program that runs it; until then of the one that queued it';
 COMMENT ON COLUMN studies.created IS 'when queued, UTC';
 COMMENT ON COLUMN studies.by_whom IS 'who queued it';
 COMMENT ON COLUMN studies.started IS 'first claim, UTC';

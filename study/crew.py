@@ -22,20 +22,22 @@ from queue import SimpleQueue
 
 LONG_POSES = 1_000_000  # a helper takes a second or two to start: shorter work is done before
 LONG_BUILDS = 10_000
+STANDS_STILL_S = 600.0  # a task in a helper that takes longer is done here
 
 
 class HelperLost(Exception):
     """A helper that does not answer, or not as wanted."""
 
 
-def long_study(path: Path) -> bool:
-    """A first guess, before anything heavy is imported, whether the study of a file is worth helpers."""
+def worth_starting(path: Path) -> int:
+    """A first guess, before anything heavy is imported, how many helpers the study of a file could use."""
     try:
         small = path.is_file() and path.stat().st_size < 2**20
-        asked = tomllib.loads(path.read_text(encoding="utf-8")) if small else {}
-        return int(asked["size"]) * (16 if asked["method"] == "sobol" else 1) >= LONG_BUILDS
-    except (OSError, ValueError, KeyError, TypeError, RecursionError):
-        return False
+        asked = tomllib.loads(path.read_text(encoding="utf-8-sig")) if small else {}
+        builds = int(asked["size"]) * (16 if asked["method"] == "sobol" else 1)
+        return 0 if builds < LONG_BUILDS else builds // LONG_BUILDS + 1
+    except (OSError, ValueError, KeyError, TypeError, ArithmeticError, RecursionError):
+        return 0
 
 
 # --- beside the catalog
@@ -48,12 +50,15 @@ class Crew:
         self.size = size
         self.helpers: list[_Helper] = []
 
-    def start(self) -> None:
-        """Start what helpers there may be; they get ready by themselves."""
-        while len(self.helpers) < self.size:
+    def start(self, most: int) -> None:
+        """Start up to `most` helpers, no more than there are cores; they get ready by themselves."""
+        self.helpers = [helper for helper in self.helpers if not helper.lost]
+        while len(self.helpers) < min(self.size, most, os.cpu_count() or 1):
             self.helpers.append(_Helper())
 
     def close(self) -> None:
+        for helper in self.helpers:
+            helper.kill()
         for helper in self.helpers:
             helper.end()
         self.helpers.clear()
@@ -65,11 +70,14 @@ class Crew:
         self.close()
 
     @contextlib.contextmanager
-    def of(self, here: Callable, plain: Callable[[], str], *, long: bool) -> Iterator["_Shift"]:
-        """An executor of one study's tasks. here: task → (Outcome, seconds) in this process; plain: what helpers are given."""
-        if long:
-            self.start()
-        shift = _Shift(here, plain() if self.helpers and long else "", self.helpers if long else [], size=1 + self.size)
+    def of(self, here: Callable, plain: Callable[[], str], *, helpers: int) -> Iterator["_Shift"]:
+        """An executor of one study's tasks, with up to so many helpers.
+
+        here: task → (Outcome, seconds) in this process; plain: what helpers are given.
+        """
+        self.start(helpers)
+        wanted = self.helpers[:helpers]
+        shift = _Shift(here, plain() if wanted else "", wanted, size=1 + self.size)
         try:
             yield shift
         finally:
@@ -124,9 +132,9 @@ class _Shift:
     def end(self):
         """Nobody begins another task; those that wait for a hand are let go, lest they keep the program from ending."""
         self.ended = True
-        self.pool.shutdown(wait=False, cancel_futures=True)
         for _ in range(self.size):
             self.free.put(None)
+        self.pool.shutdown(wait=False, cancel_futures=True)
 
 
 class _Helper:
@@ -141,6 +149,7 @@ class _Helper:
             self.process = subprocess.Popen(
                 [sys.executable, "-P", "-W", "ignore", "-m", "study.crew"], stdin=subprocess.PIPE, stdout=subprocess.PIPE,
                 stderr=subprocess.DEVNULL, env=_environment(), start_new_session=True,
+                creationflags=getattr(subprocess, "CREATE_NEW_PROCESS_GROUP", 0),
             )  # fmt: skip
             threading.Thread(target=self._await, daemon=True).start()
 
@@ -165,12 +174,17 @@ class _Helper:
 
     def do(self, plain: str, task):
         """(Outcome, seconds) of a task. Raises HelperLost, also where the task failed: it is then done here, and fails here."""
+        stands_still = threading.Timer(STANDS_STILL_S, self.kill)
+        stands_still.daemon = True
         try:
             with self.one_at_a_time:
+                stands_still.start()
                 return self._answer(plain, task)
         except (OSError, ValueError, KeyError, TypeError) as error:
             self.end()
             raise HelperLost(str(error)) from None
+        finally:
+            stands_still.cancel()
 
     def _answer(self, plain, task):
         import numpy as np
@@ -196,15 +210,22 @@ class _Helper:
             raise ValueError("cut short")
         return bytearray(found)
 
-    def end(self) -> None:
+    def kill(self) -> None:
         """It holds nothing that could be lost."""
         self.lost = True
         if self.process is not None:
-            self.process.kill()
-            self.process.wait()
-            for pipe in (self.process.stdin, self.process.stdout):
-                with contextlib.suppress(OSError, ValueError):
-                    pipe.close()
+            with contextlib.suppress(OSError):
+                self.process.kill()
+
+    def end(self) -> None:
+        self.kill()
+        if self.process is None:
+            return
+        with contextlib.suppress(subprocess.TimeoutExpired):
+            self.process.wait(timeout=5)
+        for pipe in (self.process.stdin, self.process.stdout):
+            with contextlib.suppress(OSError, ValueError):
+                pipe.close()
 
 
 def _environment():

@@ -21,7 +21,7 @@ def write_sheet(dossier, path: Path) -> Path:
     )  # fmt: skip
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
-        path.write_text(html, encoding="utf-8")
+        path.write_text(html, encoding="utf-8", newline="\n")
     except OSError as error:
         raise SheetNotWritten(
             f"{path}: cannot be written: {error.strerror}; name another file with --sheet or --out"

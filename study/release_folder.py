@@ -6,6 +6,7 @@ from pathlib import Path
 
 from catalog.errors import InputError, WorkError
 
+LEFT_BEHIND = (".DS_Store", "Thumbs.db", "desktop.ini")  # by those who only look at a folder
 _PATH = re.compile(r"[A-Za-z0-9_-]+(?:\.[A-Za-z0-9_-]+)*(?:/[A-Za-z0-9_-]+(?:\.[A-Za-z0-9_-]+)*)*")
 
 
@@ -28,7 +29,7 @@ def check_folder(folder: Path) -> None:
     """Raise FolderTaken unless the folder is new or empty."""
     if folder.exists() and not folder.is_dir():
         raise FolderTaken(f"{folder}: is a file; name a folder with --out")
-    if folder.is_dir() and any(folder.iterdir()):
+    if folder.is_dir() and any(path.name not in LEFT_BEHIND for path in folder.iterdir()):
         raise FolderTaken(f"{folder}: is not empty, and a release is not mixed with other files; name a new folder with --out")
 
 
@@ -58,7 +59,7 @@ def _holds(folder, targets):
     """Whether the folder holds these files, alike to the last byte, and no others."""
     if not folder.is_dir():
         return False
-    there = [path for path in folder.rglob("*") if path.is_symlink() or not path.is_dir()]
+    there = [path for path in folder.rglob("*") if path.is_symlink() or not (path.is_dir() or path.name in LEFT_BEHIND)]
     return set(there) == set(targets) and all(
         not path.is_symlink() and path.read_bytes() == content for path, content in targets.items()
     )

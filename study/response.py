@@ -124,7 +124,10 @@ class Response:
         steps = [*enumerate(self.requests), *((None, request) for request in visits)]
         steps.sort(key=lambda step: (step[1].bump_mm, abs(step[1].roll_deg), abs(step[1].rack_mm)))
         last = {view: i for i, (_, request) in enumerate(steps) for view in self._views_of(request)}
-        return [(number, request, [v for v, at in last.items() if at == i]) for i, (number, request) in enumerate(steps)]
+        done = [[] for _ in steps]
+        for view, at in last.items():
+            done[at].append(view)
+        return [(*step, views) for step, views in zip(steps, done, strict=True)]
 
     def _views_of(self, request):
         """Keys (hand that is solved, spot, wheel where one body carries both) of the views that a request reads."""
@@ -132,7 +135,7 @@ class Response:
         for hand in self._hands_of(request):
             name, spot = self._spot(hand, request)
             spots = [spot]
-            spots += [spot.at_rest()] if "rest" in needs else []
+            spots += [spot.at_rest()] if "rest" in needs and spot.rack_mm else []
             spots += [spot._replace(locked=True)] if "locked" in needs and spot.rack_mm else []
             found += [(name, one, hand if self.solid else "") for one in spots]
         return found
@@ -227,7 +230,7 @@ class _Shelf:
         name, spot = self.response._spot(hand, request)
         rest = locked = None
         needs = KEYS[request.of].needs
-        if "rest" in needs:
+        if "rest" in needs and spot.rack_mm:
             rest = self._view(name, hand, spot.at_rest())
         if "locked" in needs and spot.rack_mm:
             locked = self._view(name, hand, spot._replace(locked=True))

@@ -93,7 +93,8 @@ def check(catalog: Catalog, study: Study, folder: Path, *, by: str) -> revisions
     """The revision that a study names; StudyDoesNotFit where the study asks of it what it does not have or cannot do."""
     revision, geometry = geometry_of(catalog, study, folder, by=by)
     try:
-        work_of(geometry, study)
+        with threadpool_limits(1):
+            work_of(geometry, study)
     except InputError as error:
         raise StudyDoesNotFit(f'study "{study.title}" on {revision.spec}: {error}') from None
     return revision
@@ -188,21 +189,27 @@ class _Run:
         with self.catalog.read() as con:
             geometry = revisions.load(con, revisions.by_id(con, self.job.revision_id))
             self.study = kept_study(con, self.job)
-        self.work = work_of(geometry, self.study)
-        self.total = sum(self.work.builds(task) for task in self.work.tasks)
+        with threadpool_limits(1):  # helpers have one thread each too, and the same bits
+            self.work = work_of(geometry, self.study)
+        self.total = sum(map(self.work.kept_builds, self.work.tasks))
         outcomes = self._kept()
-        self.done = sum(self.work.builds(task) for task in self.work.tasks if task.number in outcomes)
+        self.done = sum(self.work.kept_builds(task) for task in self.work.tasks if task.number in outcomes)
         if not self._alive() or not self._do([t for t in self.work.tasks if t.number not in outcomes], outcomes):
             return False
         return self._finish(outcomes)
 
     def _kept(self):
-        """What an earlier worker left finished."""
+        """What an earlier worker left finished; none of it where it was cut in another way."""
         outcomes = _Outcomes(self._load)
         with self.catalog.read() as con:
-            query = "SELECT chunk_no FROM kept.chunks WHERE study_id = ?"
-            for (number,) in con.execute(query, [self.job.id]).fetchall():
-                outcomes.numbers.add(number)
+            query = "SELECT chunk_no, stage, first_build, n_builds FROM kept.chunks WHERE study_id = ?"
+            found = con.execute(query, [self.job.id]).fetchall()
+        ours = {(t.number, t.stage, self.work.first_build(t), self.work.kept_builds(t)) for t in self.work.tasks}
+        if ours.issuperset(found):
+            outcomes.numbers.update(number for number, *_ in found)
+            return outcomes
+        with self.catalog.write() as con:
+            drop_chunks(con, self.job.id, self.worker, version=self.job.version)
         return outcomes
 
     def _load(self, number):
@@ -235,7 +242,8 @@ class _Run:
                 yield hands
             return
         poses = sum(self.work.builds(task) for task in tasks) * len(self.work.after.rates)
-        with threadpool_limits(1), self.crew.of(self._timed, plain, long=poses >= LONG_POSES) as hands:
+        helpers = len(tasks) - 1 if poses >= LONG_POSES else 0
+        with threadpool_limits(1), self.crew.of(self._timed, plain, helpers=helpers) as hands:
             yield hands
 
     def _timed(self, task):

@@ -98,13 +98,13 @@ class Hand:
                     f"rack {spot.rack_mm:g} mm: this {self.corner.linkage} has no steer link; ask for it at rack 0"
                 )
         free = [spot for spot in new if not spot.locked]
-        if free:
-            self._stations |= {found.spot: found for found in self._solve_stations(free)}
-        for spot in new:
-            if spot.locked:
-                start = self.station(spot.at_rest())
-                block = self._nominal(1)
-                self._stations[spot] = self._solve_from(start, *self._rows_and_road(block, spot), [spot])[0]
+        with np.errstate(all="ignore"):  # what is not finite is judged, and told, as out of reach
+            if free:
+                self._stations |= {found.spot: found for found in self._solve_stations(free)}
+            for spot in new:
+                if spot.locked:
+                    start, block = self.station(spot.at_rest()), self._nominal(1)
+                    self._stations[spot] = self._solve_from(start, *self._rows_and_road(block, spot), [spot])[0]
 
     def _nominal(self, count):
         return self.block(np.zeros((self.scalars, count)), np.zeros((len(self.bench.by), count)))

@@ -149,6 +149,10 @@ class StudyWork:
             return task.count * VERDICT_BUILDS
         return 1 + 2 * self.model.scalars
 
+    def kept_builds(self, task: Task) -> int:
+        """How many builds a task's outcome holds."""
+        return 1 + self.model.scalars if task.kind == "worst" else self.builds(task)
+
     def first_build(self, task: Task) -> int:
         """Number of a task's first build among those of its kind."""
         return task.first * self.method.block(self.problem) if task.kind == "draws" else 0

@@ -21,6 +21,7 @@ VERDICT_BUILDS, FIRST_LOOK = 2048, 512
 BEYOND_DOUBT = 0.999
 HOLD, WATCH, OPEN = "hold", "watch", "open"
 AS_DRAWN = -1
+NOT_BUILT = 4  # status of builds that were not needed
 
 
 @dataclass(frozen=True)
@@ -74,7 +75,7 @@ def flags_alone(work, numbers):
     """
     sources, ladder = work.model.sources, work.study.ladder
     fields = [field_with(work.model, {} if n == AS_DRAWN else {n: looser(sources[n], ladder)}) for n in numbers]
-    flags, status = np.full((len(fields), VERDICT_BUILDS), np.nan), np.zeros((len(fields), VERDICT_BUILDS), np.uint8)
+    flags, status = np.full((len(fields), VERDICT_BUILDS), np.nan), np.full((len(fields), VERDICT_BUILDS), NOT_BUILT, np.uint8)
     flags[:, :FIRST_LOOK], status[:, :FIRST_LOOK] = _built(work, fields, first=0, count=FIRST_LOOK)
     open_ = [i for i, n in enumerate(numbers) if n == AS_DRAWN or not _beyond_doubt(flags[i, :FIRST_LOOK], work)]
     if open_:

@@ -30,6 +30,12 @@ def print_json(value) -> None:
     print(json.dumps(value, ensure_ascii=True, allow_nan=False, indent=1))
 
 
+def as_data() -> None:
+    """What follows is data: UTF-8 and line ends as they are where it goes to a file or a pipe."""
+    if hasattr(sys.stdout, "reconfigure") and not sys.stdout.isatty():
+        sys.stdout.reconfigure(encoding="utf-8", newline="\n")
+
+
 def clean(text) -> str:
     """A user-given text without control characters, so that a name cannot steer the terminal."""
     return _CONTROL.sub("�", str(text))

@@ -19,11 +19,10 @@ def run(
     catalog: CatalogOption = None,
 ) -> None:
     """Add the geometry, queue and work the study, print the ranking, write the sheet."""
-    from study.crew import Crew, long_study
+    from study.crew import Crew, worth_starting
 
     with Crew((threads or default_threads()) - 1) as crew:
-        if long_study(study):
-            crew.start()  # helpers get ready while this process does
+        crew.start(worth_starting(study))  # helpers get ready while this process does
         from catalog.store import Catalog
         from study.commands.work_command import progress_watch, stop_on_signals
         from study.runner import enqueue, read_asked, work

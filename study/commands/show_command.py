@@ -4,7 +4,7 @@ from typing import Annotated
 
 import typer
 
-from study.commands.common import CatalogOption, JsonOption, clean, geometry_named, print_json, print_table
+from study.commands.common import CatalogOption, JsonOption, as_data, clean, geometry_named, print_json, print_table
 
 
 def run(
@@ -20,6 +20,7 @@ def run(
     if as_json:
         print_json({"geometry": label, "content_hash": record.content_hash, **to_record(record)})
     elif text:
+        as_data()
         print(record.text)
         if record.points_text:
             print(record.points_text)

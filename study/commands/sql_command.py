@@ -10,7 +10,7 @@ from typing import Annotated
 import typer
 
 from catalog.errors import InputError, WorkError
-from study.commands.common import WIDTH_UNSEEN, CatalogOption, JsonOption, clean, print_json, print_table
+from study.commands.common import WIDTH_UNSEEN, CatalogOption, JsonOption, as_data, clean, print_json, print_table
 from study.commands.tabular import json_value, unique, write_csv
 
 
@@ -47,6 +47,7 @@ def run(
     if as_json:
         print_json([dict(zip(names, map(json_value, row), strict=True)) for row in rows])
     elif as_csv:
+        as_data()
         write_csv(sys.stdout, names, rows)
     else:
         _print(names, rows, most)

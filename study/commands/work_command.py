@@ -67,14 +67,15 @@ def progress_watch(*, quiet=False):
 
 @contextlib.contextmanager
 def stop_on_signals(watch):
-    """Ctrl-C and a request to terminate set the watch's stop; a second one ends at once."""
+    """Ctrl-C, a closed terminal and a request to terminate set the watch's stop; a second one ends at once."""
 
     def stop(number, frame):
         if watch.stop.is_set():
             raise KeyboardInterrupt
         watch.stop.set()
 
-    signals = [s for s in (signal.SIGINT, getattr(signal, "SIGTERM", None)) if s is not None]
+    names = ("SIGINT", "SIGTERM", "SIGHUP", "SIGBREAK")  # the last on Windows only, the one before not there
+    signals = [getattr(signal, name) for name in names if hasattr(signal, name)]
     before = {s: signal.signal(s, stop) for s in signals}
     try:
         yield

@@ -128,12 +128,12 @@ def two_hands():
         return work.run(task), 0.0
 
     def on(crew):
-        with crew.of(here, lambda: to_plain(work.geometry, asked), long=crew.size > 0) as hands:
+        with crew.of(here, lambda: to_plain(work.geometry, asked), helpers=crew.size) as hands:
             for future in [hands.submit(task) for task in work.tasks]:
                 future.result()
 
     with Crew(1) as pair:
-        pair.start()
+        pair.start(1)
         while not pair.helpers[0].is_ready:
             time.sleep(0.05)
         on(pair)

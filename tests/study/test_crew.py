@@ -13,7 +13,7 @@ from catalog import queue
 from catalog.store import Catalog
 from study import crew as crews
 from study import runner, tasks
-from study.crew import Crew, HelperLost, long_study
+from study.crew import Crew, HelperLost, worth_starting
 from study.plain_work import to_plain
 from study.runner import Watch, enqueue, work
 from study.study_file import parse_study
@@ -47,7 +47,7 @@ def job(catalog, number):
 
 def ready(crew, *, seconds=60.0):
     """Start a crew and wait until its helpers can take tasks."""
-    crew.start()
+    crew.start(crew.size)
     end = time.monotonic() + seconds
     while not all(helper.is_ready for helper in crew.helpers):
         assert time.monotonic() < end, "helpers do not get ready"
@@ -87,6 +87,18 @@ def test_helpers_killed_half_way_change_no_bit(catalog):
         assert first.lost
 
 
+@pytest.mark.skipif(os.name == "nt", reason="signals of POSIX")
+def test_a_helper_that_stands_still_holds_up_nothing(catalog, monkeypatch):
+    alone = hash_of(catalog, Crew(0))
+    with ready(Crew(1)) as crew:
+        monkeypatch.setattr(crews, "STANDS_STILL_S", 1.0)
+        helper = crew.helpers[0]
+        helper.process.send_signal(signal.SIGSTOP)
+        assert hash_of(catalog, crew) == alone and helper.lost
+        crew.start(1)
+        assert crew.helpers[0] is not helper  # another one for the next study
+
+
 def test_helpers_that_cannot_start_are_missed_by_nobody(catalog, monkeypatch):
     monkeypatch.setattr(sys, "executable", "/nowhere/python")
     with Crew(3) as crew:
@@ -102,7 +114,7 @@ def test_a_task_that_fails_in_a_helper_fails_here_with_its_own_error():
         plain = to_plain(made.geometry, asked)
         with pytest.raises(HelperLost):
             crew.helpers[0].do(plain, wrong)
-        with crew.of(made.run, lambda: plain, long=True) as hands, pytest.raises(AttributeError, match="no such kind"):
+        with crew.of(made.run, lambda: plain, helpers=1) as hands, pytest.raises(AttributeError, match="no such kind"):
             hands.submit(wrong).result(30)
 
 
@@ -115,11 +127,11 @@ def test_tasks_of_an_ended_study_hold_up_neither_the_next_one_nor_the_end_of_the
         return task
 
     with Crew(1) as crew:
-        with crew.of(slow, str, long=False) as hands:
+        with crew.of(slow, str, helpers=0) as hands:
             futures = [hands.submit(n) for n in range(6)]
             assert begun.wait(10)
         assert all(f.cancelled() for f in futures[2:])
-        with crew.of(lambda task: task, str, long=False) as hands:
+        with crew.of(lambda task: task, str, helpers=0) as hands:
             assert [hands.submit(n).result(10) for n in range(4)] == [0, 1, 2, 3]
         hold.set()
 
@@ -127,7 +139,7 @@ def test_tasks_of_an_ended_study_hold_up_neither_the_next_one_nor_the_end_of_the
 @pytest.mark.skipif(os.name == "nt", reason="signals of POSIX")
 def test_a_program_killed_takes_its_helpers_along():
     code = (
-        "import time; from study.crew import Crew\ncrew = Crew(2); crew.start()\n"
+        "import time; from study.crew import Crew\ncrew = Crew(2); crew.start(2)\n"
         "print(*(h.process.pid for h in crew.helpers), flush=True)\n"
         "while not all(h.is_ready for h in crew.helpers): time.sleep(0.05)\nprint('ready', flush=True); time.sleep(60)"
     )
@@ -157,15 +169,16 @@ def gone(pid):
     [
         ('method = "sobol"\nsize = 1024', True), ('method = "sobol"\nsize = 64', False), ('method = "spread"\nsize = 20000', True),
         ('method = "spread"\nsize = "many"', False), ('method = "spread"', False), ("no toml [", False), ("size = [[1]]\nmethod=1", False),
+        ('method = "sobol"\nsize = inf', False), ('method = "spread"\nsize = 1e400', False),
     ],
 )  # fmt: skip
 def test_the_first_guess_of_a_long_study_never_fails(tmp_path, text, expected):
     path = tmp_path / "s.toml"
     path.write_text(text, encoding="utf-8")
-    assert long_study(path) is expected
-    assert not long_study(tmp_path) and not long_study(tmp_path / "none.toml")
+    assert (worth_starting(path) > 0) is expected
+    assert not worth_starting(tmp_path) and not worth_starting(tmp_path / "none.toml")
     path.write_bytes(b"\xff\xfe\x00")
-    assert not long_study(path)
+    assert not worth_starting(path)
 
 
 def test_a_helper_finds_modules_where_this_process_does_and_not_in_the_working_folder(tmp_path, monkeypatch):

@@ -222,7 +222,9 @@ def test_a_stop_leaves_the_study_queued_with_what_is_finished(catalog, keep_at_o
     assert run_all(catalog) == [number]
 
 
-def test_what_another_version_has_begun_is_done_anew(catalog, keep_at_once, monkeypatch):
+@pytest.mark.parametrize("version", ["0.0.1", None])
+def test_what_another_version_has_begun_is_done_anew(catalog, keep_at_once, monkeypatch, version):
+    """Also where its chunks alone tell, since a checkout may change without its version."""
     untouched, number = ask(catalog, method="spread", size=2000), ask(catalog, method="spread", size=2000)
     work(catalog, crew=Crew(0), watch=Watch(), study_id=untouched)
     watch = Watch()
@@ -230,7 +232,7 @@ def test_what_another_version_has_begun_is_done_anew(catalog, keep_at_once, monk
     monkeypatch.setattr(tasks, "BUILDS_PER_TASK", 100)  # the other version cuts in another way
     assert work(catalog, crew=Crew(0), watch=watch) == [] and job(catalog, number).done
     with catalog.write() as con:
-        con.execute("UPDATE kept.studies SET version = '0.0.1' WHERE id = ?", [number])
+        con.execute("UPDATE kept.studies SET version = coalesce(?, version) WHERE id = ?", [version, number])
     monkeypatch.setattr(tasks, "BUILDS_PER_TASK", SMALL["BUILDS_PER_TASK"])
     assert run_all(catalog) == [number]
     found, wanted = job(catalog, number), job(catalog, untouched)
