@@ -8,7 +8,7 @@ import contextlib
 import threading
 import time
 from collections.abc import Callable
-from concurrent.futures import FIRST_COMPLETED, wait
+from concurrent.futures import FIRST_COMPLETED, ThreadPoolExecutor, wait
 from dataclasses import dataclass, field
 from functools import partial
 from importlib.metadata import PackageNotFoundError, version
@@ -183,27 +183,28 @@ class _Run:
         self.crew, self.pool = crew, pool
         self.started = time.monotonic()
         self.last_sign, self.write_s = self.started, 0.0
+        self.last_keep = None
 
     def run(self) -> bool:
         """Do what is not kept yet and finish; False when the study was cancelled or taken over."""
         with self.catalog.read() as con:
             geometry = revisions.load(con, revisions.by_id(con, self.job.revision_id))
             self.study = kept_study(con, self.job)
+            query = "SELECT chunk_no, stage, first_build, n_builds FROM kept.chunks WHERE study_id = ?"
+            found = con.execute(query, [self.job.id]).fetchall()
         with threadpool_limits(1):  # helpers have one thread each too, and the same bits
             self.work = work_of(geometry, self.study)
         self.total = sum(map(self.work.kept_builds, self.work.tasks))
-        outcomes = self._kept()
+        outcomes = self._kept(found)
         self.done = sum(self.work.kept_builds(task) for task in self.work.tasks if task.number in outcomes)
-        if not self._alive() or not self._do([t for t in self.work.tasks if t.number not in outcomes], outcomes):
-            return False
-        return self._finish(outcomes)
+        with ThreadPoolExecutor(1) as self.side:
+            if not self._do([t for t in self.work.tasks if t.number not in outcomes], outcomes):
+                return False
+            return self._finish(outcomes)
 
-    def _kept(self):
+    def _kept(self, found):
         """What an earlier worker left finished; none of it where it was cut in another way."""
         outcomes = _Outcomes(self._load)
-        with self.catalog.read() as con:
-            query = "SELECT chunk_no, stage, first_build, n_builds FROM kept.chunks WHERE study_id = ?"
-            found = con.execute(query, [self.job.id]).fetchall()
         ours = {(t.number, t.stage, self.work.first_build(t), self.work.kept_builds(t)) for t in self.work.tasks}
         if ours.issuperset(found):
             outcomes.numbers.update(number for number, *_ in found)
@@ -255,11 +256,13 @@ class _Run:
         stop = self.watch.stop.is_set()
         patience = min(max(KEEP_S, KEEP_TIMES * self.write_s), HEARTBEAT_S) if fresh else HEARTBEAT_S
         late = time.monotonic() - self.last_sign > patience or sum(o.values.nbytes for _, o, _ in fresh) > KEEP_BYTES
-        if (stop or last or late) and not (self._keep(fresh) if fresh else self._alive()):
+        if last and fresh:  # while they are written the tables are made
+            self.last_keep = self.side.submit(self._keep, list(fresh))
+        elif (stop or last or late) and not (self._keep(fresh) if fresh else self._alive()):
             return False
         if stop or last or late:
             for task, outcome, _ in fresh:
-                outcomes.add(task.number, outcome)
+                outcomes.add(task.number, outcome, hold=last)
                 self.done += len(outcome.status)
             fresh.clear()
             self.watch.progress(self.job, self.done, self.total)
@@ -273,7 +276,7 @@ class _Run:
         """Finished tasks into the catalog, in one transaction."""
         begun = time.monotonic()
         with self.catalog.write() as con:
-            ours = all(self._store(con, *one) for one in fresh)
+            ours = self._sign(con) and all(self._store(con, *one) for one in fresh)
         self.last_sign = time.monotonic()
         self.write_s = self.last_sign - begun
         return ours
@@ -296,15 +299,20 @@ class _Run:
     def _alive(self):
         self.last_sign = time.monotonic()
         with self.catalog.write() as con:
-            return queue.heartbeat(con, self.job.id, self.worker, total=self.total)
+            return self._sign(con)
+
+    def _sign(self, con):
+        return queue.heartbeat(con, self.job.id, self.worker, total=self.total)
 
     def _finish(self, outcomes):
         with threadpool_limits(1):
             found, facts = tables(self.work, outcomes)
+        if self.last_keep is not None and not self.last_keep.result():
+            return False
         facts["seconds"] = time.monotonic() - self.started
         facts["stages"] = list(self.work.stages)
         with self.catalog.write() as con:
-            return queue.finish(con, self.job.id, self.worker, tables={"study": [facts], **found})
+            return self._sign(con) and queue.finish(con, self.job.id, self.worker, tables={"study": [facts], **found})
 
 
 class _Outcomes:
@@ -319,9 +327,9 @@ class _Outcomes:
     def __getitem__(self, number) -> Outcome:
         return self.held[number] if number in self.held else self.load(number)
 
-    def add(self, number, outcome) -> None:
+    def add(self, number, outcome, *, hold=False) -> None:
         self.numbers.add(number)
-        if self.size + outcome.values.nbytes <= HELD_BYTES:
+        if hold or self.size + outcome.values.nbytes <= HELD_BYTES:
             self.held[number] = outcome
             self.size += outcome.values.nbytes
 
