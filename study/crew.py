@@ -22,6 +22,7 @@ from queue import SimpleQueue
 
 LONG_POSES = 1_000_000  # a helper takes a second or two to start: shorter work is done before
 LONG_BUILDS = 10_000
+THREADS = 2  # more of one process only wait for each other
 STANDS_STILL_S = 600.0  # a task in a helper that takes longer is done here
 
 
@@ -85,14 +86,14 @@ class Crew:
 
 
 class _Shift:
-    """Tasks of one study to whoever is free: threads of this process, each replaced by a helper when that is ready."""
+    """Tasks of one study to whoever is free: two threads of this process, or one and the helpers that are ready."""
 
     def __init__(self, here, plain, helpers, *, size):
         self.here, self.plain, self.size = here, plain, size
         self.free: SimpleQueue = SimpleQueue()
         self.lock, self.ended = threading.Lock(), False
-        self.threads, self.ready = size, 0
-        for _ in range(size):
+        self.threads, self.ready = min(size, THREADS), 0
+        for _ in range(self.threads):
             self.free.put(None)
         self.pool = ThreadPoolExecutor(size)
         for helper in helpers:
@@ -120,11 +121,11 @@ class _Shift:
             self._goes_back(helper)
 
     def _goes_back(self, helper):
-        """A thread steps back for a helper that has joined, but one stays; for a lost helper a thread steps in."""
+        """A thread steps back where a helper has joined, and one stays; for a lost helper a thread steps in."""
         with self.lock:
             if helper is not None and helper.lost:
                 self.ready, self.threads, helper = self.ready - 1, self.threads + 1, None
-            surplus = helper is None and self.threads > max(1, self.size - self.ready)
+            surplus = helper is None and self.threads > (1 if self.ready else min(self.size, THREADS))
             self.threads -= surplus
         if not surplus:
             self.free.put(helper)

@@ -157,7 +157,7 @@ def _print_demand(dossier):
         [
             r["adjuster"],
             r["by"],
-            *(f"{r[k]:+.2f}" for k in ("q025", "q50", "q975", "low", "high")),
+            *(f"{round(r[k], 2) + 0.0:+.2f}" for k in ("q025", "q50", "q975", "low", "high")),
             percent(r["ran_out_share"]),
         ]
         for r in dossier.tables["demand"]

@@ -284,7 +284,10 @@ def test_an_older_catalog_is_migrated_at_opening(tmp_path, later_program):
     assert sorted(path.name for path in tmp_path.iterdir()) == ["a.duckdb", "later"]
 
 
-def test_a_failed_migration_leaves_the_old_file_as_it_was(tmp_path, later_program):
+@pytest.mark.parametrize("in_place", [False, True])
+def test_a_failed_migration_leaves_the_old_file_as_it_was(tmp_path, later_program, monkeypatch, in_place):
+    """In place as on Windows too, where all steps are one transaction."""
+    monkeypatch.setattr(migrate, "WINDOWS", in_place)
     catalog, _ = with_study(tmp_path / "a.duckdb")
     before = catalog.path.read_bytes()
     later_program.write_text("CREATE TABLE kept.more (i INTEGER); SELECT * FROM kept.nowhere;")
