@@ -18,6 +18,12 @@ def done_chunks(con: "DuckDBPyConnection", study_id: int, *, stage: str) -> set[
     return {row[0] for row in con.execute(query, [study_id, stage]).fetchall()}
 
 
+def kept_cuts(con: "DuckDBPyConnection", study_id: int) -> list[tuple[int, str, int, int]]:
+    """How a study's kept chunks were cut: (number, stage, first build, builds) of each."""
+    query = "SELECT chunk_no, stage, first_build, n_builds FROM kept.chunks WHERE study_id = ?"
+    return con.execute(query, [study_id]).fetchall()
+
+
 def store_chunk(
     con: "DuckDBPyConnection",
     study_id: int,
@@ -55,18 +61,16 @@ def store_chunk(
     return True
 
 
-def drop_chunks(con: "DuckDBPyConnection", study_id: int, worker: str, *, version: str) -> int:
-    """Forget what another version of the program has kept of a study that this worker runs; gives how many chunks.
+def drop_chunks(con: "DuckDBPyConnection", study_id: int, worker: str, *, version: str) -> None:
+    """Forget what another version of the program has kept of a study that this worker runs.
 
     Chunks are cut and computed by one version: those of two would make a result that neither would give.
     """
     if not is_ours(con, study_id, worker):
-        return 0
-    found = con.execute("SELECT count(*) FROM kept.chunks WHERE study_id = ?", [study_id]).fetchone()[0]
-    for table in ("build_values", "builds", "chunks") if found else ():
+        return
+    for table in ("build_values", "builds", "chunks"):
         con.execute(f"DELETE FROM kept.{table} WHERE study_id = ?", [study_id])
     con.execute("UPDATE kept.studies SET version = ?, done_builds = 0 WHERE id = ?", [version, study_id])
-    return found
 
 
 def load_chunk(

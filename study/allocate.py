@@ -107,7 +107,7 @@ class Allocation:
     def built_share(self, chosen) -> Share:
         """Share of good builds of a combination, through the kernel."""
         changed = {s: self.options[s][k].zone for s, k in chosen.items()}
-        good, _ = good_flags(self.work, field_with(self.work.model, changed), builds=VERIFY_BUILDS)
+        good = good_flags(self.work, field_with(self.work.model, changed), builds=VERIFY_BUILDS)
         return Share.of(good)
 
     def _solve(self, k):

@@ -324,4 +324,3 @@ ROWS = {
     "semi-trailing-arm": _semi_trailing_arm_rows,
     "solid-axle": _named_link_rows,
 }
-LINKAGES_READY = tuple(ROWS)

@@ -54,6 +54,10 @@ def requests_of(measure) -> list[Request]:
     return [Request(measure.of, measure.side, s["bump"], s["roll"], s["rack"]) for s in spots]
 
 
+def _requests(measures):
+    return [request for measure in measures for request in requests_of(measure)]
+
+
 TAKES = {
     "range": lambda x, v: v.max(axis=0) - v.min(axis=0),
     "max": lambda x, v: v.max(axis=0),
@@ -82,7 +86,7 @@ class Response:
         self.model = build_model(corners, study)
         self.hands = {hand: self._hand(hand, corner) for hand, corner in corners.items()}
         self.starts = {hand: self._bench_start(found) for hand, found in self.hands.items() if found.bench.by}
-        self._ask(tuple(study.measures), [request for measure in study.measures for request in requests_of(measure)])
+        self._ask(tuple(study.measures), _requests(study.measures))
 
     def asking(self, measures=None, *, requests=None, visits=(), stepless=None) -> "Response":
         """The same car asked for other measures, or for bare requests (then `values` is empty); hands are shared.
@@ -91,9 +95,10 @@ class Response:
         """
         other = copy(self)
         other.stepless = self.stepless if stepless is None else stepless
-        measures = tuple(self.measures if measures is None and requests is None else measures or ())
-        wanted = [request for measure in measures for request in requests_of(measure)] if requests is None else requests
-        other._ask(measures, wanted, visits=[request for measure in visits for request in requests_of(measure)])
+        if requests is None:
+            measures = self.measures if measures is None else tuple(measures)
+            requests = _requests(measures)
+        other._ask(measures or (), requests, visits=_requests(visits))
         return other
 
     def _hand(self, hand, corner):

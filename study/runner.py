@@ -18,7 +18,7 @@ import numpy as np
 from threadpoolctl import threadpool_limits
 
 from catalog import processes, queue, revisions
-from catalog.chunks import drop_chunks, load_chunk, store_chunk
+from catalog.chunks import drop_chunks, kept_cuts, load_chunk, store_chunk
 from catalog.errors import HoldtightError, InputError, WorkError
 from catalog.store import Catalog, CatalogBusy, CatalogFailed, CatalogGone, CatalogMissing, CatalogNotWritable
 from study.cluster import ClusterLost, ClusterPool
@@ -33,10 +33,6 @@ HEARTBEAT_S = 10.0
 HELD_BYTES, KEEP_BYTES = 16 * 2**20, 8 * 2**20
 KEEP_S = 1.0  # finished tasks wait this long for others, since a write to the catalog has a price of its own,
 KEEP_TIMES = 4.0  # and so many times what the last write took, unless they grow large
-
-
-class StudyFailed(WorkError):
-    """A study ended with an error of its own."""
 
 
 class StudyDoesNotFit(InputError):
@@ -190,8 +186,7 @@ class _Run:
         with self.catalog.read() as con:
             geometry = revisions.load(con, revisions.by_id(con, self.job.revision_id))
             self.study = kept_study(con, self.job)
-            query = "SELECT chunk_no, stage, first_build, n_builds FROM kept.chunks WHERE study_id = ?"
-            found = con.execute(query, [self.job.id]).fetchall()
+            found = kept_cuts(con, self.job.id)
         with threadpool_limits(1):  # helpers have one thread each too, and the same bits
             self.work = work_of(geometry, self.study)
         self.total = sum(map(self.work.kept_builds, self.work.tasks))

@@ -63,9 +63,8 @@ def field_with(model, changed: dict[int, zones.Zone]) -> ZoneField:
 
 
 def good_flags(work, field: ZoneField, *, builds: int = VERDICT_BUILDS):
-    """Which of the same independent draws (N,) are good when built in these zones, and their status (N,)."""
-    flags, status = _built(work, [field], first=0, count=builds)
-    return flags[0], status[0]
+    """Which of the same independent draws (N,) are good when built in these zones."""
+    return _built(work, [field], first=0, count=builds)[0][0]
 
 
 def flags_alone(work, numbers):
@@ -77,15 +76,16 @@ def flags_alone(work, numbers):
     fields = [field_with(work.model, {} if n == AS_DRAWN else {n: looser(sources[n], ladder)}) for n in numbers]
     flags, status = np.full((len(fields), VERDICT_BUILDS), np.nan), np.full((len(fields), VERDICT_BUILDS), NOT_BUILT, np.uint8)
     flags[:, :FIRST_LOOK], status[:, :FIRST_LOOK] = _built(work, fields, first=0, count=FIRST_LOOK)
-    open_ = [i for i, n in enumerate(numbers) if n == AS_DRAWN or not _beyond_doubt(flags[i, :FIRST_LOOK], work)]
+    open_ = [i for i, n in enumerate(numbers) if n == AS_DRAWN or _first_verdict(flags[i, :FIRST_LOOK], work) == WATCH]
     if open_:
         rest = _built(work, [fields[i] for i in open_], first=FIRST_LOOK, count=VERDICT_BUILDS - FIRST_LOOK)
         flags[open_, FIRST_LOOK:], status[open_, FIRST_LOOK:] = rest
     return flags, status
 
 
-def _beyond_doubt(good, work):
-    return verdict_of(Share.of(good, confidence=BEYOND_DOUBT), work.study.wanted_share) != WATCH
+def _first_verdict(good, work):
+    """What the first builds say beyond doubt, else `watch`."""
+    return verdict_of(Share.of(good, confidence=BEYOND_DOUBT), work.study.wanted_share)
 
 
 def _built(work, fields, *, first, count):
@@ -127,8 +127,8 @@ def open_together(work, alone: dict[int, Share]) -> tuple[list[int], Share | Non
 
 def _flags_unless_held(work, field):
     """Flags of all builds, or of the first alone where they hold beyond doubt."""
-    first, _ = good_flags(work, field, builds=FIRST_LOOK)
-    if verdict_of(Share.of(first, confidence=BEYOND_DOUBT), work.study.wanted_share) == HOLD:
+    first = good_flags(work, field, builds=FIRST_LOOK)
+    if _first_verdict(first, work) == HOLD:
         return first
     rest, _ = _built(work, [field], first=FIRST_LOOK, count=VERDICT_BUILDS - FIRST_LOOK)
     return np.concatenate((first, rest[0]))

@@ -1,6 +1,5 @@
 """The command line: what it prints for programs, what it says of wrong input, and its exit codes."""
 
-import json
 import re
 import shutil
 import sys
@@ -10,6 +9,7 @@ import pytest
 from study import tasks
 from study.commands import main
 from study.measures import KEYS
+from tests.study.command_line import Done
 from tests.study.small_studies import DEMO, ROOT, TOE, study_text
 
 MEASURES = (
@@ -21,18 +21,6 @@ MEASURES = (
 )
 ERRORS = {"chassis.upper_*": "{ plus_minus = 1.0 }", "upright.hub_axis": "{ tilt_deg = 0.05 }"}
 SMALL = {"CURVE_BUILDS": 8, "CURVE_KEYS": {"bump": ("camber_deg",)}}
-
-
-class Done:
-    """What a command left behind."""
-
-    def __init__(self, code, out, err):
-        self.code, self.out, self.err = code, out, err
-
-    @property
-    def json(self):
-        assert self.code == 0, self.err
-        return json.loads(self.out)
 
 
 @pytest.fixture

@@ -72,12 +72,12 @@ def test_the_counterfactual_share_is_that_of_a_study_drawn_so(judged):
     row = next(r for r in found["verdicts"] if r["source"] == "chassis.upper_front_pivot")
     wider = ERRORS + '\n"chassis.upper_front_pivot" = { plus_minus = 1.6 }'
     again = StudyWork(wishbone(), study(errors=wider, alignment=ALIGN, measures=LIMITS, more="size = 512"))
-    good, _ = good_flags(again, again.model.field, builds=FIRST_LOOK)
+    good = good_flags(again, again.model.field, builds=FIRST_LOOK)
     assert row["good_share"] == good.mean()
     assert row["verdict"] == HOLD  # the first look had told: all of them say the same
-    every, _ = good_flags(again, again.model.field)
+    every = good_flags(again, again.model.field)
     assert (every[:FIRST_LOOK] == good).all() and verdict_of(Share.of(every), 0.95) == HOLD
-    drawn, _ = good_flags(work, work.model.field)
+    drawn = good_flags(work, work.model.field)
     assert row["as_drawn"] == drawn.mean()
 
 
